@@ -22,5 +22,10 @@
 #![forbid(unsafe_code)]
 
 pub mod methods;
+pub mod numerics;
+pub mod outcome;
 pub mod plan;
+pub mod population;
 pub mod score;
+pub mod streams;
+pub mod trial;

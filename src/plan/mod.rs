@@ -18,7 +18,7 @@ pub use batch::{
 };
 pub use estimand::Estimand;
 pub use method::{BatchWeights, DebiasingPenalty, Method, MethodKind, VarianceForm};
-pub use model::{Model, Term};
+pub use model::{Design, Model, Term};
 pub use population::{CorrelationFactor, LawPopulation, Marginal, Population, Roster, Source};
 pub use precision::{Bound, Precision, Requirement, Verdicts};
 pub use truth::{Drift, Noise, NoiseLaw, Truth};
@@ -59,6 +59,22 @@ impl Plan {
     #[must_use]
     pub fn units(&self) -> usize {
         self.batches.iter().map(|batch| batch.size).sum()
+    }
+
+    /// The columns that a trial of this plan stores.
+    #[must_use]
+    pub fn design(&self) -> Design {
+        let rules = self
+            .batches
+            .iter()
+            .flat_map(|batch| &batch.select)
+            .filter_map(|part| part.rule.fit())
+            .map(|fit| &fit.model);
+        Design::new(
+            self.arm_count(),
+            self.population.columns.len(),
+            std::iter::once(&self.analysis).chain(rules),
+        )
     }
 
     /// Number of arms; 0 for a study without arms.

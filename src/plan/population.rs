@@ -32,6 +32,7 @@ pub struct LawPopulation {
 
 /// Marginal law of one covariate.
 #[derive(Debug, Clone, PartialEq)]
+#[allow(missing_docs)] // the fields are described on their variant
 pub enum Marginal {
     /// Normal with mean and standard deviation (`sd > 0`).
     Normal { mean: f64, sd: f64 },

@@ -41,6 +41,7 @@ pub struct Noise {
 
 /// Standardised noise law.
 #[derive(Debug, Clone, Copy, PartialEq)]
+#[allow(missing_docs)] // the fields are described on their variant
 pub enum NoiseLaw {
     /// Standard normal.
     Normal,
@@ -54,6 +55,7 @@ pub enum NoiseLaw {
 
 /// Change of the mean outcome over batches, the same in all arms.
 #[derive(Debug, Clone, Copy, PartialEq)]
+#[allow(missing_docs)] // the fields are described on their variant
 pub enum Drift {
     /// None.
     None,

@@ -1,0 +1,428 @@
+//! Dense kernels of the replay loop: Gram matrix, Cholesky factor, triangular solves.
+//!
+//! Matrices are column-major. The kernels are compiled for several instruction sets and chosen at
+//! run time, but every sum has one fixed order (eight interleaved partial sums, added pairwise at
+//! the end) and products are not fused with sums, so the bits do not depend on the instruction
+//! set.
+
+use pulp::Arch;
+
+/// Interleaved partial sums of a dot product. Eight doubles fill one 512-bit or two 256-bit
+/// registers, enough independent chains to hide the latency of an addition.
+const LANES: usize = 8;
+
+/// A view of some rows of a column-major matrix.
+#[derive(Debug, Clone, Copy)]
+pub struct Columns<'a> {
+    values: &'a [f64],
+    leading: usize,
+    first: usize,
+    rows: usize,
+}
+
+impl<'a> Columns<'a> {
+    /// Rows `first .. first + rows` of the matrix stored in `values` with leading dimension
+    /// `leading`.
+    ///
+    /// # Panics
+    /// If the rows do not fit into the leading dimension.
+    #[must_use]
+    pub fn new(values: &'a [f64], leading: usize, first: usize, rows: usize) -> Self {
+        assert!(first + rows <= leading, "rows {first}..{} of {leading}", first + rows);
+        Self { values, leading, first, rows }
+    }
+
+    /// Number of rows.
+    #[must_use]
+    pub fn rows(&self) -> usize {
+        self.rows
+    }
+
+    /// One column.
+    #[must_use]
+    pub fn column(&self, column: usize) -> &'a [f64] {
+        let start = column * self.leading + self.first;
+        &self.values[start..start + self.rows]
+    }
+}
+
+/// Which compiled version of the kernels to use; the results are the same bit for bit.
+#[derive(Debug, Clone, Copy)]
+pub struct Kernels {
+    arch: Option<Arch>,
+}
+
+impl Default for Kernels {
+    fn default() -> Self {
+        Self::detect()
+    }
+}
+
+impl Kernels {
+    /// The version for the widest instruction set that this processor has.
+    #[must_use]
+    pub fn detect() -> Self {
+        Self { arch: Some(Arch::new()) }
+    }
+
+    /// The version for the baseline instruction set.
+    #[must_use]
+    pub fn portable() -> Self {
+        Self { arch: None }
+    }
+
+    #[inline(always)]
+    fn run<T>(self, kernel: impl FnOnce() -> T) -> T {
+        match self.arch {
+            Some(arch) => arch.dispatch(kernel),
+            None => kernel(),
+        }
+    }
+
+    /// Gram matrix of the columns `used`: entry `(i, j)` of the `p × p` column-major `out` is the
+    /// inner product of columns `used[i]` and `used[j]`. Both triangles are written.
+    pub fn gram(self, x: Columns<'_>, used: &[usize], out: &mut [f64]) {
+        self.run(
+            #[inline(always)]
+            || gram(x, used, out),
+        );
+    }
+
+    /// Inner products of the columns `used` with `y`.
+    pub fn cross(self, x: Columns<'_>, used: &[usize], y: &[f64], out: &mut [f64]) {
+        self.run(
+            #[inline(always)]
+            || {
+                for (value, &column) in out.iter_mut().zip(used) {
+                    *value = dot(x.column(column), y);
+                }
+            },
+        );
+    }
+
+    /// Inner product.
+    #[must_use]
+    pub fn dot(self, a: &[f64], b: &[f64]) -> f64 {
+        self.run(
+            #[inline(always)]
+            || dot(a, b),
+        )
+    }
+
+    /// `y += Σ_j coefficients[j] × column used[j]`.
+    pub fn add_combination(
+        self,
+        x: Columns<'_>,
+        used: &[usize],
+        coefficients: &[f64],
+        y: &mut [f64],
+    ) {
+        self.run(
+            #[inline(always)]
+            || add_combination(x, used, coefficients, y),
+        );
+    }
+
+    /// `y += factor × x`.
+    pub fn add_scaled(self, factor: f64, x: &[f64], y: &mut [f64]) {
+        self.run(
+            #[inline(always)]
+            || add_scaled(factor, x, y),
+        );
+    }
+
+    /// Replaces the lower triangle of the symmetric `p × p` matrix by its Cholesky factor and
+    /// returns the smallest tolerance `L_jj² / S_jj` met. Columns whose tolerance is not above
+    /// `threshold` are aliased: their diagonal becomes infinite, which makes their coefficient
+    /// zero in every later solve.
+    pub fn cholesky(self, matrix: &mut [f64], p: usize, threshold: f64) -> f64 {
+        self.run(
+            #[inline(always)]
+            || cholesky(matrix, p, threshold),
+        )
+    }
+
+    /// Solves `L v = b` in place.
+    pub fn solve_lower(self, factor: &[f64], p: usize, b: &mut [f64]) {
+        self.run(
+            #[inline(always)]
+            || {
+                for j in 0..p {
+                    let column = &factor[j * p..(j + 1) * p];
+                    let value = b[j] / column[j];
+                    b[j] = value;
+                    if value != 0.0 {
+                        add_scaled(-value, &column[j + 1..], &mut b[j + 1..p]);
+                    }
+                }
+            },
+        );
+    }
+
+    /// Solves `L' v = b` in place.
+    pub fn solve_lower_transposed(self, factor: &[f64], p: usize, b: &mut [f64]) {
+        self.run(
+            #[inline(always)]
+            || {
+                for j in (0..p).rev() {
+                    let column = &factor[j * p..(j + 1) * p];
+                    let sum = dot(&column[j + 1..], &b[j + 1..p]);
+                    b[j] = (b[j] - sum) / column[j];
+                }
+            },
+        );
+    }
+
+    /// Solves `T L' = X` for the `rows × p` matrix `T` (column-major, leading dimension `rows`):
+    /// row `i` of `T` is `L^{-1} x_i`, so its squared length is the leverage of row `i`.
+    pub fn whiten(self, x: Columns<'_>, used: &[usize], factor: &[f64], out: &mut [f64]) {
+        self.run(
+            #[inline(always)]
+            || whiten(x, used, factor, out),
+        );
+    }
+}
+
+#[inline(always)]
+fn fold(sums: [f64; LANES]) -> f64 {
+    ((sums[0] + sums[4]) + (sums[2] + sums[6])) + ((sums[1] + sums[5]) + (sums[3] + sums[7]))
+}
+
+#[inline(always)]
+fn dot(a: &[f64], b: &[f64]) -> f64 {
+    let (a_chunks, a_rest) = a.as_chunks::<LANES>();
+    let (b_chunks, b_rest) = b.as_chunks::<LANES>();
+    let mut sums = [0.0; LANES];
+    for (a, b) in a_chunks.iter().zip(b_chunks) {
+        for lane in 0..LANES {
+            sums[lane] += a[lane] * b[lane];
+        }
+    }
+    let mut total = fold(sums);
+    for (a, b) in a_rest.iter().zip(b_rest) {
+        total += a * b;
+    }
+    total
+}
+
+/// Inner products of two columns with two columns in one pass over memory.
+#[inline(always)]
+fn dot_two_by_two(a: [&[f64]; 2], b: [&[f64]; 2]) -> [[f64; 2]; 2] {
+    let (a0, a0_rest) = a[0].as_chunks::<LANES>();
+    let (a1, a1_rest) = a[1].as_chunks::<LANES>();
+    let (b0, b0_rest) = b[0].as_chunks::<LANES>();
+    let (b1, b1_rest) = b[1].as_chunks::<LANES>();
+    let mut s00 = [0.0; LANES];
+    let mut s01 = [0.0; LANES];
+    let mut s10 = [0.0; LANES];
+    let mut s11 = [0.0; LANES];
+    for (((a0, a1), b0), b1) in a0.iter().zip(a1).zip(b0).zip(b1) {
+        for lane in 0..LANES {
+            s00[lane] += a0[lane] * b0[lane];
+            s01[lane] += a0[lane] * b1[lane];
+            s10[lane] += a1[lane] * b0[lane];
+            s11[lane] += a1[lane] * b1[lane];
+        }
+    }
+    let mut out = [[fold(s00), fold(s01)], [fold(s10), fold(s11)]];
+    for (((a0, a1), b0), b1) in a0_rest.iter().zip(a1_rest).zip(b0_rest).zip(b1_rest) {
+        out[0][0] += a0 * b0;
+        out[0][1] += a0 * b1;
+        out[1][0] += a1 * b0;
+        out[1][1] += a1 * b1;
+    }
+    out
+}
+
+#[inline(always)]
+fn gram(x: Columns<'_>, used: &[usize], out: &mut [f64]) {
+    let p = used.len();
+    for i in (0..p).step_by(2) {
+        let wide = i + 1 < p;
+        let a0 = x.column(used[i]);
+        let a1 = if wide { x.column(used[i + 1]) } else { a0 };
+        for j in (i..p).step_by(2) {
+            let b0 = x.column(used[j]);
+            let pair = j + 1 < p;
+            let b1 = if pair { x.column(used[j + 1]) } else { b0 };
+            let products = dot_two_by_two([a0, a1], [b0, b1]);
+            for (di, row) in products.iter().enumerate().take(1 + usize::from(wide)) {
+                for (dj, &value) in row.iter().enumerate().take(1 + usize::from(pair)) {
+                    out[(j + dj) * p + i + di] = value;
+                    out[(i + di) * p + j + dj] = value;
+                }
+            }
+        }
+    }
+}
+
+#[inline(always)]
+fn add_scaled(factor: f64, x: &[f64], y: &mut [f64]) {
+    for (y, x) in y.iter_mut().zip(x) {
+        *y += factor * x;
+    }
+}
+
+#[inline(always)]
+fn add_combination(x: Columns<'_>, used: &[usize], coefficients: &[f64], y: &mut [f64]) {
+    // Four columns a pass: one load and one store of y for four products.
+    let (used_quads, used_rest) = used.as_chunks::<4>();
+    let (coefficient_quads, coefficient_rest) = coefficients.as_chunks::<4>();
+    for (columns, factors) in used_quads.iter().zip(coefficient_quads) {
+        let c0 = x.column(columns[0]);
+        let c1 = x.column(columns[1]);
+        let c2 = x.column(columns[2]);
+        let c3 = x.column(columns[3]);
+        for ((((y, c0), c1), c2), c3) in y.iter_mut().zip(c0).zip(c1).zip(c2).zip(c3) {
+            *y += (factors[0] * c0 + factors[1] * c1) + (factors[2] * c2 + factors[3] * c3);
+        }
+    }
+    for (&column, &factor) in used_rest.iter().zip(coefficient_rest) {
+        add_scaled(factor, x.column(column), y);
+    }
+}
+
+#[inline(always)]
+fn cholesky(matrix: &mut [f64], p: usize, threshold: f64) -> f64 {
+    let mut smallest: f64 = 1.0;
+    for j in 0..p {
+        let (done, rest) = matrix.split_at_mut(j * p);
+        let column = &mut rest[..p];
+        let original = column[j];
+        let target = &mut column[j..];
+        let mut k = 0;
+        while k + 4 <= j {
+            let l0 = &done[k * p + j..(k + 1) * p];
+            let l1 = &done[(k + 1) * p + j..(k + 2) * p];
+            let l2 = &done[(k + 2) * p + j..(k + 3) * p];
+            let l3 = &done[(k + 3) * p + j..(k + 4) * p];
+            let (f0, f1, f2, f3) = (l0[0], l1[0], l2[0], l3[0]);
+            for ((((t, l0), l1), l2), l3) in target.iter_mut().zip(l0).zip(l1).zip(l2).zip(l3) {
+                *t -= (f0 * l0 + f1 * l1) + (f2 * l2 + f3 * l3);
+            }
+            k += 4;
+        }
+        while k < j {
+            let l = &done[k * p + j..(k + 1) * p];
+            add_scaled(-l[0], l, target);
+            k += 1;
+        }
+        let pivot = target[0];
+        // A zero or negative pivot, or a zero column, gives tolerance 0 (NaN is caught by `max`).
+        let tolerance = if original > 0.0 { (pivot / original).max(0.0) } else { 0.0 };
+        smallest = smallest.min(tolerance);
+        if tolerance > threshold {
+            let scale = 1.0 / pivot.sqrt();
+            for value in target.iter_mut() {
+                *value *= scale;
+            }
+        } else {
+            target.fill(0.0);
+            target[0] = f64::INFINITY;
+        }
+    }
+    smallest
+}
+
+#[inline(always)]
+fn whiten(x: Columns<'_>, used: &[usize], factor: &[f64], out: &mut [f64]) {
+    let p = used.len();
+    let rows = x.rows();
+    for j in 0..p {
+        let (done, rest) = out.split_at_mut(j * rows);
+        let target = &mut rest[..rows];
+        target.copy_from_slice(x.column(used[j]));
+        for k in 0..j {
+            add_scaled(-factor[k * p + j], &done[k * rows..(k + 1) * rows], target);
+        }
+        let scale = 1.0 / factor[j * p + j];
+        for value in target.iter_mut() {
+            *value *= scale;
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use nalgebra::{DMatrix, DVector};
+    use proptest::prelude::*;
+
+    fn matrix(rows: usize, columns: usize, seed: u64) -> Vec<f64> {
+        let mut state = seed.wrapping_mul(2).wrapping_add(1);
+        (0..rows * columns)
+            .map(|_| {
+                state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695);
+                f64::from(u32::try_from(state >> 33).unwrap()) / f64::from(1u32 << 30) - 1.0
+            })
+            .collect()
+    }
+
+    proptest! {
+        #[test]
+        fn kernels_agree_with_a_reference_library(
+            rows in 1usize..70, p in 1usize..23, seed in 0u64..1000,
+        ) {
+            let rows = rows + p;
+            let x = matrix(rows, p, seed);
+            let y = matrix(rows, 1, seed + 1);
+            let used: Vec<usize> = (0..p).collect();
+            let view = Columns::new(&x, rows, 0, rows);
+            let reference = DMatrix::from_column_slice(rows, p, &x);
+            let target = DVector::from_column_slice(&y);
+            let mut bits: Vec<Vec<u64>> = Vec::new();
+            for kernels in [Kernels::detect(), Kernels::portable()] {
+                let mut gram = vec![0.0; p * p];
+                kernels.gram(view, &used, &mut gram);
+                let expected = reference.transpose() * &reference;
+                for (a, b) in gram.iter().zip(expected.iter()) {
+                    prop_assert!((a - b).abs() <= 1e-12 * (1.0 + b.abs()));
+                }
+                let mut cross = vec![0.0; p];
+                kernels.cross(view, &used, &y, &mut cross);
+                let mut factor = gram.clone();
+                let tolerance = kernels.cholesky(&mut factor, p, 1e-10);
+                prop_assume!(tolerance > 1e-4);
+                let mut solution = cross.clone();
+                kernels.solve_lower(&factor, p, &mut solution);
+                kernels.solve_lower_transposed(&factor, p, &mut solution);
+                let expected = reference.clone().svd(true, true).solve(&target, 1e-14).unwrap();
+                for (a, b) in solution.iter().zip(expected.iter()) {
+                    prop_assert!((a - b).abs() <= 1e-8 * (1.0 + b.abs()), "{a} {b}");
+                }
+                let mut whitened = vec![0.0; rows * p];
+                kernels.whiten(view, &used, &factor, &mut whitened);
+                let trace: f64 = whitened.iter().map(|v| v * v).sum();
+                prop_assert!((trace - p as f64).abs() < 1e-8 * p as f64, "leverages sum to p");
+                let mut fitted = vec![0.0; rows];
+                kernels.add_combination(view, &used, &solution, &mut fitted);
+                let direct = &reference * DVector::from_column_slice(&solution);
+                for (a, b) in fitted.iter().zip(direct.iter()) {
+                    prop_assert!((a - b).abs() <= 1e-10 * (1.0 + b.abs()));
+                }
+                bits.push(
+                    [gram, factor, solution, whitened, fitted]
+                        .concat().iter().map(|v| v.to_bits()).collect(),
+                );
+            }
+            prop_assert_eq!(&bits[0], &bits[1], "bits must not depend on the instruction set");
+        }
+    }
+
+    #[test]
+    fn an_aliased_column_gets_coefficient_zero() {
+        // Third column is the sum of the first two.
+        let x = [1.0, 2.0, 3.0, 5.0, 1.0, 0.0, 4.0, 2.0, 2.0, 2.0, 7.0, 7.0];
+        let view = Columns::new(&x, 4, 0, 4);
+        let kernels = Kernels::detect();
+        let mut gram = vec![0.0; 9];
+        kernels.gram(view, &[0, 1, 2], &mut gram);
+        let tolerance = kernels.cholesky(&mut gram, 3, 1e-12);
+        assert!(tolerance < 1e-12);
+        let mut b = vec![1.0, 2.0, 3.0];
+        kernels.solve_lower(&gram, 3, &mut b);
+        kernels.solve_lower_transposed(&gram, 3, &mut b);
+        assert!(b[2].abs() < f64::MIN_POSITIVE);
+        assert!(b[0].is_finite() && b[1].is_finite());
+    }
+}
