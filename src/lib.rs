@@ -26,6 +26,8 @@ pub mod numerics;
 pub mod outcome;
 pub mod plan;
 pub mod population;
+pub mod replay;
+pub mod rules;
 pub mod score;
 pub mod streams;
 pub mod trial;

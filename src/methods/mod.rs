@@ -2,5 +2,50 @@
 //! why they cannot.
 
 mod answer;
+mod batch_combined;
+mod critical;
+mod fit;
+mod inverse_variance;
+mod least_squares;
+mod ridge;
+mod single_batch;
+mod tuned;
+mod w_decorrelation;
+mod workbench;
 
 pub use answer::{Answer, Estimate, NoAnswer};
+pub use critical::CriticalValues;
+pub use fit::Fit;
+pub use tuned::{Needs, TunedMethod};
+pub use workbench::Workbench;
+
+use crate::trial::Trial;
+use ridge::RidgeScratch;
+
+/// The estimate of one method for one estimand, from a prepared workbench.
+#[must_use]
+pub fn estimate(
+    method: &TunedMethod,
+    bench: &mut Workbench,
+    trial: &Trial,
+    estimand: usize,
+) -> Estimate {
+    match method {
+        TunedMethod::LeastSquares { variance } => {
+            least_squares::estimate(bench, trial, estimand, *variance)
+        }
+        TunedMethod::Ridge { penalty } => ridge::estimate(bench, estimand, *penalty),
+        TunedMethod::FirstBatch => single_batch::estimate(bench, estimand, 0),
+        TunedMethod::LastBatch => {
+            let last = bench.batches() - 1;
+            single_batch::estimate(bench, estimand, last)
+        }
+        TunedMethod::BatchCombined { weights } => {
+            batch_combined::estimate(bench, estimand, &weights[estimand])
+        }
+        TunedMethod::InverseVariance => inverse_variance::estimate(bench, estimand),
+        TunedMethod::WDecorrelation { penalty } => {
+            w_decorrelation::estimate(bench, estimand, *penalty)
+        }
+    }
+}

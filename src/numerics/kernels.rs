@@ -71,8 +71,10 @@ impl Kernels {
         Self { arch: None }
     }
 
+    /// Runs `kernel` compiled for the chosen instruction set; [`dot`] and [`add_scaled`] inside it
+    /// are compiled with it.
     #[inline(always)]
-    fn run<T>(self, kernel: impl FnOnce() -> T) -> T {
+    pub(crate) fn run<T>(self, kernel: impl FnOnce() -> T) -> T {
         match self.arch {
             Some(arch) => arch.dispatch(kernel),
             None => kernel(),
@@ -188,8 +190,9 @@ fn fold(sums: [f64; LANES]) -> f64 {
     ((sums[0] + sums[4]) + (sums[2] + sums[6])) + ((sums[1] + sums[5]) + (sums[3] + sums[7]))
 }
 
+/// Inner product with eight interleaved partial sums.
 #[inline(always)]
-fn dot(a: &[f64], b: &[f64]) -> f64 {
+pub(crate) fn dot(a: &[f64], b: &[f64]) -> f64 {
     let (a_chunks, a_rest) = a.as_chunks::<LANES>();
     let (b_chunks, b_rest) = b.as_chunks::<LANES>();
     let mut sums = [0.0; LANES];
@@ -256,8 +259,9 @@ fn gram(x: Columns<'_>, used: &[usize], out: &mut [f64]) {
     }
 }
 
+/// `y += factor × x`.
 #[inline(always)]
-fn add_scaled(factor: f64, x: &[f64], y: &mut [f64]) {
+pub(crate) fn add_scaled(factor: f64, x: &[f64], y: &mut [f64]) {
     for (y, x) in y.iter_mut().zip(x) {
         *y += factor * x;
     }

@@ -4,4 +4,4 @@ mod record;
 mod sums;
 
 pub use record::Trial;
-pub use sums::{BatchSums, SumsView};
+pub use sums::{BatchSums, SumsPrefix, SumsView};

@@ -89,3 +89,75 @@ impl BatchSums {
         }
     }
 }
+
+/// Sums of the first batches of a trial, and of nothing later.
+#[derive(Debug, Clone, Copy)]
+pub struct SumsPrefix<'a> {
+    used: &'a [usize],
+    gram: &'a [f64],
+    cross: &'a [f64],
+    units: &'a [usize],
+}
+
+impl BatchSums {
+    /// Sums of the first `batches` batches.
+    #[must_use]
+    pub fn prefix(&self, batches: usize) -> SumsPrefix<'_> {
+        let width = self.used.len();
+        SumsPrefix {
+            used: &self.used,
+            gram: &self.gram[..batches * width * width],
+            cross: &self.cross[..batches * width],
+            units: &self.units[..batches],
+        }
+    }
+}
+
+impl SumsPrefix<'_> {
+    /// Number of units.
+    #[must_use]
+    pub fn units(&self) -> usize {
+        self.units.iter().sum()
+    }
+
+    /// Adds up the sums of all batches over the used columns at `positions`: `gram` gets the
+    /// `p × p` Gram matrix (column-major, both triangles), `cross` the `p` cross-products.
+    pub fn total(&self, positions: &[usize], gram: &mut [f64], cross: &mut [f64]) {
+        let width = self.used.len();
+        let p = positions.len();
+        gram.fill(0.0);
+        cross.fill(0.0);
+        for batch in 0..self.units.len() {
+            let batch_gram = &self.gram[batch * width * width..(batch + 1) * width * width];
+            let batch_cross = &self.cross[batch * width..(batch + 1) * width];
+            for (j, &column) in positions.iter().enumerate() {
+                let source = &batch_gram[column * width..(column + 1) * width];
+                let target = &mut gram[j * p..(j + 1) * p];
+                if p == width {
+                    for (value, add) in target.iter_mut().zip(source) {
+                        *value += add;
+                    }
+                } else {
+                    for (value, &row) in target.iter_mut().zip(positions) {
+                        *value += source[row];
+                    }
+                }
+                cross[j] += batch_cross[column];
+            }
+        }
+    }
+}
+
+impl BatchSums {
+    /// Sums of one batch, as a prefix of one.
+    #[must_use]
+    pub fn batch_only(&self, batch: usize) -> SumsPrefix<'_> {
+        let width = self.used.len();
+        SumsPrefix {
+            used: &self.used,
+            gram: &self.gram[batch * width * width..(batch + 1) * width * width],
+            cross: &self.cross[batch * width..(batch + 1) * width],
+            units: &self.units[batch..=batch],
+        }
+    }
+}

@@ -1,0 +1,265 @@
+//! What methods share in one trial: fits, residuals, leverages, scratch space.
+
+use super::fit::FitScratch;
+use super::{CriticalValues, Fit, Needs, NoAnswer, RidgeScratch};
+use crate::numerics::kernels::Kernels;
+use crate::trial::{BatchSums, Trial};
+
+/// Fits of one trial, prepared once for all methods, in buffers that are reused.
+#[derive(Debug, Clone)]
+pub struct Workbench {
+    /// Stored design columns of the analysis model.
+    pub(super) stored: Vec<usize>,
+    positions: Vec<usize>,
+    /// Position of the intercept in the analysis model.
+    pub(super) intercept: Option<usize>,
+    /// Contrast of each estimand under the truth at hand.
+    pub(super) contrasts: Vec<Vec<f64>>,
+    needs: Needs,
+    pub(super) kernels: Kernels,
+    pub(super) critical: CriticalValues,
+    pub(super) pooled: Fit,
+    pub(super) batch_fits: Vec<Fit>,
+    /// Pooled Gram matrix and cross-products, before factoring.
+    pub(super) gram: Vec<f64>,
+    pub(super) cross: Vec<f64>,
+    pub(super) residuals: Vec<f64>,
+    pub(super) leverages: Vec<f64>,
+    /// Squared length of each row of the analysis design.
+    pub(super) row_squares: Vec<f64>,
+    /// Rows of the analysis design, row-major.
+    pub(super) rows: Vec<f64>,
+    pub(super) weights: Vec<f64>,
+    pub(super) batch_values: Vec<(f64, f64)>,
+    whitened: Vec<f64>,
+    pub(super) scratch: FitScratch,
+    pub(super) ridge: RidgeScratch,
+    pub(super) sum_of_outcome_squares: f64,
+}
+
+impl Workbench {
+    /// A workbench for an analysis model on the stored columns `stored`, for at most `units`
+    /// units in `batches` batches, for methods that need `needs` at confidence level `level`.
+    #[must_use]
+    pub fn new(
+        stored: &[usize],
+        used: &[usize],
+        intercept: Option<usize>,
+        contrasts: Vec<Vec<f64>>,
+        batches: usize,
+        units: usize,
+        needs: Needs,
+        level: f64,
+        kernels: Kernels,
+    ) -> Self {
+        let p = stored.len();
+        let positions = stored
+            .iter()
+            .filter_map(|column| used.iter().position(|candidate| candidate == column))
+            .collect();
+        Self {
+            stored: stored.to_vec(),
+            positions,
+            intercept,
+            contrasts,
+            needs,
+            kernels,
+            critical: CriticalValues::new(level, units),
+            pooled: Fit::new(p),
+            batch_fits: (0..batches).map(|_| Fit::new(p)).collect(),
+            gram: vec![0.0; p * p],
+            cross: vec![0.0; p],
+            residuals: Vec::new(),
+            leverages: Vec::new(),
+            row_squares: Vec::new(),
+            rows: Vec::new(),
+            weights: Vec::new(),
+            batch_values: Vec::new(),
+            whitened: Vec::new(),
+            scratch: FitScratch::default(),
+            ridge: RidgeScratch::default(),
+            sum_of_outcome_squares: 0.0,
+        }
+    }
+
+    /// Number of batches of the plan.
+    #[must_use]
+    pub fn batches(&self) -> usize {
+        self.batch_fits.len()
+    }
+
+    /// Contrast of each estimand, to be set for a truth.
+    pub fn contrasts_mut(&mut self) -> &mut [Vec<f64>] {
+        &mut self.contrasts
+    }
+
+    /// Fit on all units.
+    #[must_use]
+    pub fn pooled(&self) -> &Fit {
+        &self.pooled
+    }
+
+    /// Pooled Gram matrix of the analysis model, `p × p`.
+    #[must_use]
+    pub fn gram(&self) -> &[f64] {
+        &self.gram
+    }
+
+    /// Point estimate and `c'(X'X)^{-1}c` of the pooled fit, if there is one.
+    pub fn pooled_contrast(&mut self, estimand: usize) -> Option<(f64, f64)> {
+        self.pooled.answered().ok()?;
+        let contrast = &self.contrasts[estimand];
+        let variance = self.pooled.contrast_variance(contrast, &mut self.scratch, self.kernels);
+        Some((self.pooled.point(contrast, self.kernels), variance))
+    }
+
+    /// `c'(X_k'X_k)^{-1}c` of one batch, if the batch identifies its coefficients.
+    pub fn batch_contrast_variance(&mut self, batch: usize, estimand: usize) -> Option<f64> {
+        let fit = &self.batch_fits[batch];
+        fit.answered().ok()?;
+        let contrast = &self.contrasts[estimand];
+        Some(fit.contrast_variance(contrast, &mut self.scratch, self.kernels))
+    }
+
+    /// Prepares all that the methods need from a finished trial.
+    pub fn prepare(&mut self, trial: &Trial, sums: &BatchSums) {
+        let kernels = self.kernels;
+        let rows = 0..trial.rows();
+        if self.needs.pooled_fit {
+            let all = sums.prefix(sums.batches());
+            all.total(&self.positions, &mut self.gram, &mut self.cross);
+            let (gram, cross) = self.pooled.sums_mut();
+            gram.copy_from_slice(&self.gram);
+            cross.copy_from_slice(&self.cross);
+            self.pooled.solve(
+                trial,
+                rows.clone(),
+                &self.stored,
+                NoAnswer::RankDeficient,
+                &mut self.scratch,
+                kernels,
+            );
+            self.sum_of_outcome_squares = kernels.dot(trial.outcomes(), trial.outcomes());
+            if self.needs.residuals && self.pooled.answered().is_ok() {
+                self.fill_residuals(trial);
+            }
+            if self.needs.leverages && self.pooled.answered().is_ok() {
+                self.pooled.leverages(
+                    trial,
+                    rows,
+                    &self.stored,
+                    &mut self.whitened,
+                    kernels,
+                    &mut self.leverages,
+                );
+            }
+        }
+        let last = self.batch_fits.len() - 1;
+        for (batch, fit) in self.batch_fits.iter_mut().enumerate() {
+            let wanted = self.needs.every_batch
+                || (self.needs.first_batch && batch == 0)
+                || (self.needs.last_batch && batch == last);
+            if !wanted {
+                continue;
+            }
+            let (gram, cross) = fit.sums_mut();
+            sums.batch_only(batch).total(&self.positions, gram, cross);
+            fit.solve(
+                trial,
+                trial.batch_rows(batch),
+                &self.stored,
+                NoAnswer::BatchRankDeficient,
+                &mut self.scratch,
+                kernels,
+            );
+        }
+        if self.needs.rows_in_order {
+            self.fill_rows(trial);
+        }
+    }
+
+    fn fill_residuals(&mut self, trial: &Trial) {
+        self.residuals.clear();
+        self.residuals.resize(trial.rows(), 0.0);
+        let fitted = &mut self.residuals;
+        let coefficients = self.pooled.coefficients();
+        let design = trial.design(0..trial.rows());
+        self.kernels.add_combination(design, &self.stored, coefficients, fitted);
+        for (value, outcome) in fitted.iter_mut().zip(trial.outcomes()) {
+            *value = outcome - *value;
+        }
+    }
+
+    /// Copies the analysis design row by row and sums the squares of each row.
+    fn fill_rows(&mut self, trial: &Trial) {
+        /// Rows copied together, so that the columns are read in cache lines.
+        const TILE: usize = 16;
+        let (n, p) = (trial.rows(), self.stored.len());
+        self.rows.resize(n * p, 0.0);
+        self.row_squares.clear();
+        self.row_squares.resize(n, 0.0);
+        let design = trial.design(0..n);
+        for start in (0..n).step_by(TILE) {
+            let end = (start + TILE).min(n);
+            for (j, &column) in self.stored.iter().enumerate() {
+                for (i, &value) in design.column(column)[start..end].iter().enumerate() {
+                    self.rows[(start + i) * p + j] = value;
+                }
+            }
+        }
+        for &column in &self.stored {
+            for (sum, value) in self.row_squares.iter_mut().zip(design.column(column)) {
+                *sum += value * value;
+            }
+        }
+    }
+
+    /// `a = X(X'X)^{-1}c` of the pooled fit, into `weights`.
+    pub(super) fn fill_contrast_weights(&mut self, trial: &Trial, estimand: usize) {
+        self.pooled.contrast_weights(
+            &self.contrasts[estimand],
+            trial,
+            0..trial.rows(),
+            &self.stored,
+            &mut self.scratch,
+            self.kernels,
+            &mut self.weights,
+        );
+    }
+
+    /// Within-batch variance pooled over batches, with its degrees of freedom.
+    pub(super) fn within_batch_variance(&self) -> Result<(f64, usize), NoAnswer> {
+        let mut squares = 0.0;
+        let mut degrees = 0;
+        for fit in &self.batch_fits {
+            fit.answered()?;
+            squares += fit.residual_squares();
+            degrees += fit.degrees();
+        }
+        if degrees == 0 {
+            return Err(NoAnswer::NoResidualDegrees);
+        }
+        #[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
+        Ok((squares / degrees as f64, degrees))
+    }
+
+    /// Estimate and unit variance `c'(X_k'X_k)^{-1}c` of every batch, into `batch_values`.
+    pub(super) fn fill_batch_values(&mut self, estimand: usize) {
+        let contrast = &self.contrasts[estimand];
+        self.batch_values.clear();
+        for fit in &self.batch_fits {
+            let variance = fit.contrast_variance(contrast, &mut self.scratch, self.kernels);
+            self.batch_values.push((fit.point(contrast, self.kernels), variance));
+        }
+    }
+}
+
+/// An answer, unless its standard error is zero or not finite.
+pub(super) fn checked(answer: super::Answer) -> super::Estimate {
+    if answer.point.is_finite() && answer.standard_error.is_finite() && answer.standard_error > 0.0
+    {
+        Ok(answer)
+    } else {
+        Err(NoAnswer::DegenerateVariance)
+    }
+}

@@ -1,0 +1,43 @@
+//! Prediction variance of candidates.
+
+use crate::numerics::kernels::{Columns, Kernels};
+use crate::plan::Term;
+use crate::population::Pool;
+use crate::rules::WorkingFit;
+
+/// `x'(S + λI)^{-1}x` for every candidate, with arm terms at the reference arm.
+pub(super) fn score(
+    fit: &WorkingFit,
+    pool: &Pool,
+    kernels: Kernels,
+    scratch: &mut Vec<f64>,
+    scores: &mut Vec<f64>,
+) {
+    let count = pool.count();
+    let p = fit.terms().len();
+    scratch.clear();
+    scratch.resize(2 * count * p, 0.0);
+    let (rows, whitened) = scratch.split_at_mut(count * p);
+    for (index, term) in fit.terms().iter().enumerate() {
+        let target = &mut rows[index * count..(index + 1) * count];
+        match *term {
+            Term::Intercept => target.fill(1.0),
+            Term::Covariate(column) => {
+                target.copy_from_slice(pool.covariates().column(column));
+            }
+            Term::Arm(_) | Term::ArmCovariate { .. } => {}
+        }
+    }
+    scores.clear();
+    scores.resize(count, 0.0);
+    if count == 0 {
+        return;
+    }
+    let used: Vec<usize> = (0..p).collect();
+    kernels.whiten(Columns::new(rows, count, 0, count), &used, fit.factor(), whitened);
+    for column in whitened.chunks_exact(count) {
+        for (score, value) in scores.iter_mut().zip(column) {
+            *score += value * value;
+        }
+    }
+}
