@@ -5,7 +5,7 @@
 //! the end) and products are not fused with sums, so the bits do not depend on the instruction
 //! set.
 
-use pulp::Arch;
+use pulp::{Arch, Simd, WithSimd};
 
 /// Interleaved partial sums of a dot product. Eight doubles fill one 512-bit or two 256-bit
 /// registers, enough independent chains to hide the latency of an addition.
@@ -84,10 +84,11 @@ impl Kernels {
     /// Gram matrix of the columns `used`: entry `(i, j)` of the `p × p` column-major `out` is the
     /// inner product of columns `used[i]` and `used[j]`. Both triangles are written.
     pub fn gram(self, x: Columns<'_>, used: &[usize], out: &mut [f64]) {
-        self.run(
-            #[inline(always)]
-            || gram(x, used, out),
-        );
+        let gram = Gram { x, used, out };
+        match self.arch {
+            Some(arch) => arch.dispatch(gram),
+            None => gram.with_simd(pulp::Scalar::new()),
+        }
     }
 
     /// Inner products of the columns `used` with `y`.
@@ -208,26 +209,75 @@ pub(crate) fn dot(a: &[f64], b: &[f64]) -> f64 {
     total
 }
 
-/// Inner products of two columns with two columns in one pass over memory.
+/// Gram matrix in blocks of two columns by two, one pass over memory for each block.
+///
+/// Written with explicit vectors: left to itself, the compiler shuffles where it should stream,
+/// at a third of the speed.
+struct Gram<'a, 'b> {
+    x: Columns<'a>,
+    used: &'b [usize],
+    out: &'b mut [f64],
+}
+
+impl WithSimd for Gram<'_, '_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn with_simd<S: Simd>(self, simd: S) {
+        let Self { x, used, out } = self;
+        let p = used.len();
+        for i in (0..p).step_by(2) {
+            let wide = i + 1 < p;
+            let a0 = x.column(used[i]);
+            let a1 = if wide { x.column(used[i + 1]) } else { a0 };
+            for j in (i..p).step_by(2) {
+                let b0 = x.column(used[j]);
+                let pair = j + 1 < p;
+                let b1 = if pair { x.column(used[j + 1]) } else { b0 };
+                let products = two_by_two(simd, [a0, a1], [b0, b1]);
+                for (di, row) in products.iter().enumerate().take(1 + usize::from(wide)) {
+                    for (dj, &value) in row.iter().enumerate().take(1 + usize::from(pair)) {
+                        out[(j + dj) * p + i + di] = value;
+                        out[(i + di) * p + j + dj] = value;
+                    }
+                }
+            }
+        }
+    }
+}
+
+/// Inner products of two columns with two columns, each with eight interleaved partial sums
+/// whatever the width of a vector.
 #[inline(always)]
-fn dot_two_by_two(a: [&[f64]; 2], b: [&[f64]; 2]) -> [[f64; 2]; 2] {
+fn two_by_two<S: Simd>(simd: S, a: [&[f64]; 2], b: [&[f64]; 2]) -> [[f64; 2]; 2] {
     let (a0, a0_rest) = a[0].as_chunks::<LANES>();
     let (a1, a1_rest) = a[1].as_chunks::<LANES>();
     let (b0, b0_rest) = b[0].as_chunks::<LANES>();
     let (b1, b1_rest) = b[1].as_chunks::<LANES>();
-    let mut s00 = [0.0; LANES];
-    let mut s01 = [0.0; LANES];
-    let mut s10 = [0.0; LANES];
-    let mut s11 = [0.0; LANES];
+    let vectors = LANES / S::F64_LANES;
+    let zero = simd.splat_f64s(0.0);
+    let mut sums = [[[zero; LANES]; 2]; 2];
     for (((a0, a1), b0), b1) in a0.iter().zip(a1).zip(b0).zip(b1) {
-        for lane in 0..LANES {
-            s00[lane] += a0[lane] * b0[lane];
-            s01[lane] += a0[lane] * b1[lane];
-            s10[lane] += a1[lane] * b0[lane];
-            s11[lane] += a1[lane] * b1[lane];
+        let a = [S::as_simd_f64s(a0).0, S::as_simd_f64s(a1).0];
+        let b = [S::as_simd_f64s(b0).0, S::as_simd_f64s(b1).0];
+        for vector in 0..vectors {
+            for i in 0..2 {
+                for j in 0..2 {
+                    let product = simd.mul_f64s(a[i][vector], b[j][vector]);
+                    sums[i][j][vector] = simd.add_f64s(sums[i][j][vector], product);
+                }
+            }
         }
     }
-    let mut out = [[fold(s00), fold(s01)], [fold(s10), fold(s11)]];
+    let mut out = [[0.0; 2]; 2];
+    for i in 0..2 {
+        for j in 0..2 {
+            let mut lanes = [0.0; LANES];
+            let (parts, _) = S::as_mut_simd_f64s(&mut lanes);
+            parts[..vectors].copy_from_slice(&sums[i][j][..vectors]);
+            out[i][j] = fold(lanes);
+        }
+    }
     for (((a0, a1), b0), b1) in a0_rest.iter().zip(a1_rest).zip(b0_rest).zip(b1_rest) {
         out[0][0] += a0 * b0;
         out[0][1] += a0 * b1;
@@ -235,28 +285,6 @@ fn dot_two_by_two(a: [&[f64]; 2], b: [&[f64]; 2]) -> [[f64; 2]; 2] {
         out[1][1] += a1 * b1;
     }
     out
-}
-
-#[inline(always)]
-fn gram(x: Columns<'_>, used: &[usize], out: &mut [f64]) {
-    let p = used.len();
-    for i in (0..p).step_by(2) {
-        let wide = i + 1 < p;
-        let a0 = x.column(used[i]);
-        let a1 = if wide { x.column(used[i + 1]) } else { a0 };
-        for j in (i..p).step_by(2) {
-            let b0 = x.column(used[j]);
-            let pair = j + 1 < p;
-            let b1 = if pair { x.column(used[j + 1]) } else { b0 };
-            let products = dot_two_by_two([a0, a1], [b0, b1]);
-            for (di, row) in products.iter().enumerate().take(1 + usize::from(wide)) {
-                for (dj, &value) in row.iter().enumerate().take(1 + usize::from(pair)) {
-                    out[(j + dj) * p + i + di] = value;
-                    out[(i + di) * p + j + dj] = value;
-                }
-            }
-        }
-    }
 }
 
 /// `y += factor × x`.

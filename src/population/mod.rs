@@ -1,10 +1,12 @@
 //! Covariates of candidates: drawn from a law, or units of a roster.
 
+mod extreme;
 mod law;
 mod marginal;
 mod pool;
 mod roster;
 
+pub use extreme::Extreme;
 pub use law::LawSampler;
 pub(crate) use marginal::student_t_table;
 pub use pool::Pool;
@@ -29,6 +31,29 @@ impl Sampler {
         match &population.source {
             Source::Law(law) => Self::Law(LawSampler::new(law)),
             Source::Roster(roster) => Self::Roster(RosterSampler::new(roster)),
+        }
+    }
+
+    /// Whether the extreme candidates can be drawn without the others.
+    #[must_use]
+    pub fn draws_extremes(&self) -> bool {
+        match self {
+            Self::Law(law) => law.is_gaussian(),
+            Self::Roster(_) => false,
+        }
+    }
+
+    /// Draws the extreme candidates alone into the pool, if [`Self::draws_extremes`].
+    pub fn draw_extreme(
+        &self,
+        streams: &Streams,
+        batch: usize,
+        part: usize,
+        extreme: &Extreme<'_>,
+        pool: &mut Pool,
+    ) {
+        if let Self::Law(law) = self {
+            law.draw_extreme(streams, batch, part, extreme, pool);
         }
     }
 

@@ -11,6 +11,8 @@ pub struct Pool {
     values: Vec<f64>,
     /// Independent latent normals, kept where the correlation factor needs all of them.
     pub(super) latents: Vec<f64>,
+    /// Weights of a score on the latent normals.
+    pub(super) weights: Vec<f64>,
     /// Candidate number, or roster row, of each candidate.
     sources: Vec<usize>,
     /// Roster rows not yet enrolled in this trial.
@@ -28,6 +30,7 @@ impl Pool {
             count: 0,
             values: Vec::new(),
             latents: Vec::new(),
+            weights: Vec::new(),
             sources: Vec::new(),
             remaining: Vec::new(),
             enrolled: Vec::new(),

@@ -33,6 +33,8 @@ pub struct Study {
     methods: Vec<TunedMethod>,
     needs: Needs,
     kernels: Kernels,
+    /// Whether the extreme candidates of a Gaussian population are drawn without the others.
+    draws_extremes: bool,
 }
 
 impl Study {
@@ -86,6 +88,7 @@ impl Study {
             methods: Vec::new(),
             needs: Needs::default(),
             kernels: Kernels::detect(),
+            draws_extremes: true,
             plan: plan.clone(),
         }
     }
@@ -95,6 +98,19 @@ impl Study {
     pub fn with_portable_kernels(mut self) -> Self {
         self.kernels = Kernels::portable();
         self
+    }
+
+    /// The same study with every candidate drawn, scored and ranked one by one.
+    #[must_use]
+    pub fn with_every_candidate_drawn(mut self) -> Self {
+        self.draws_extremes = false;
+        self
+    }
+
+    /// Whether the extreme candidates are drawn without the others.
+    #[must_use]
+    pub fn draws_extremes(&self) -> bool {
+        self.draws_extremes && self.sampler.draws_extremes()
     }
 
     fn tune(&self, kind: &MethodKind) -> TunedMethod {

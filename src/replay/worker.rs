@@ -109,11 +109,22 @@ impl<'a> Worker<'a> {
 
     fn enrol(&mut self, streams: &Streams, batch: usize, part: usize, due: usize) {
         let selector = &mut self.selectors[batch][part];
-        let candidates = selector.candidates();
-        self.study.sampler().draw(streams, batch, part, candidates, &mut self.pool);
-        let mut stream = streams.open(Purpose::Selection, batch, part, 0);
+        let sampler = self.study.sampler();
         let past = Past::new(&self.trial, &self.sums, due);
-        selector.choose(&past, &self.pool, &mut stream, self.kernels, &mut self.chosen);
+        let extreme =
+            if self.study.draws_extremes() { selector.extreme(&past, self.kernels) } else { None };
+        if let Some(extreme) = extreme {
+            sampler.draw_extreme(streams, batch, part, &extreme, &mut self.pool);
+            let everyone = 0..self.pool.count();
+            self.chosen.clear();
+            self.chosen.extend(
+                everyone.map(|candidate| Choice { candidate, probability: f64::NAN }),
+            );
+        } else {
+            sampler.draw(streams, batch, part, selector.candidates(), &mut self.pool);
+            let mut stream = streams.open(Purpose::Selection, batch, part, 0);
+            selector.choose(&past, &self.pool, &mut stream, self.kernels, &mut self.chosen);
+        }
         let first = self.trial.rows();
         for choice in &self.chosen {
             self.trial.push_unit(self.pool.source(choice.candidate), choice.probability);

@@ -9,7 +9,7 @@ mod uncertain;
 use super::{Past, WorkingFit};
 use crate::numerics::kernels::Kernels;
 use crate::plan::{Design, SelectPart, SelectRule};
-use crate::population::Pool;
+use crate::population::{Extreme, Pool};
 use crate::streams::Stream;
 use score::Scorer;
 
@@ -56,6 +56,19 @@ impl Selector {
     #[must_use]
     pub fn candidates(&self) -> usize {
         self.part.candidates
+    }
+
+    /// For a rule that takes the extreme candidates of a linear score: which end, and the slopes
+    /// of the score on the covariate columns. `past` holds the batches that are due.
+    pub fn extreme(&mut self, past: &Past<'_>, kernels: Kernels) -> Option<Extreme<'_>> {
+        let SelectRule::Quantile { tail, .. } = self.part.rule else { return None };
+        let (size, candidates) = (self.part.size, self.part.candidates);
+        if size >= candidates {
+            return None;
+        }
+        let scorer = self.scorer.as_mut()?;
+        scorer.update(past, kernels);
+        Some(Extreme { slopes: scorer.slopes(), tail, candidates, size })
     }
 
     /// Chooses among the pool, in order of arrival. `past` holds the batches that are due.

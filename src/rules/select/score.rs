@@ -32,6 +32,19 @@ impl Scorer {
         kernels: Kernels,
         scores: &mut Vec<f64>,
     ) {
+        let constant = self.update(past, kernels);
+        scores.clear();
+        scores.resize(pool.count(), constant);
+        kernels.add_combination(pool.covariates(), &self.columns, &self.slopes, scores);
+    }
+
+    /// Slope of the score on each covariate column, as of the last update.
+    pub(super) fn slopes(&self) -> &[f64] {
+        &self.slopes
+    }
+
+    /// Fits the working model and sets the slopes; returns the constant of the score.
+    pub(super) fn update(&mut self, past: &Past<'_>, kernels: Kernels) -> f64 {
         self.slopes.fill(0.0);
         let mut constant = 0.0;
         if let Some(fit) = &mut self.fit {
@@ -65,8 +78,6 @@ impl Scorer {
             }
             Score::Covariate { column } => self.slopes[column] = 1.0,
         }
-        scores.clear();
-        scores.resize(pool.count(), constant);
-        kernels.add_combination(pool.covariates(), &self.columns, &self.slopes, scores);
+        constant
     }
 }
