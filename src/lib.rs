@@ -27,6 +27,7 @@ pub mod outcome;
 pub mod plan;
 pub mod population;
 pub mod replay;
+pub mod report;
 pub mod rules;
 pub mod score;
 pub mod streams;

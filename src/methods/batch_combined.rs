@@ -27,5 +27,9 @@ pub(super) fn estimate(bench: &mut Workbench, estimand: usize, weights: &[f64]) 
         sum += kappa * point;
     }
     let critical = bench.critical.student(degrees);
-    checked(Answer::symmetric(sum / total, variance.sqrt() / total, critical))
+    checked(Answer::symmetric(
+        sum / total,
+        variance.sqrt() / total,
+        critical,
+    ))
 }

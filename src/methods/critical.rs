@@ -15,7 +15,11 @@ impl CriticalValues {
     #[must_use]
     pub fn new(level: f64, largest: usize) -> Self {
         let upper = 0.5 + level / 2.0;
-        Self { upper, normal: normal_quantile(upper), student: vec![f64::NAN; largest + 1] }
+        Self {
+            upper,
+            normal: normal_quantile(upper),
+            student: vec![f64::NAN; largest + 1],
+        }
     }
 
     /// Standard normal critical value.
@@ -25,7 +29,6 @@ impl CriticalValues {
     }
 
     /// Student t critical value; `degrees` must be at least one.
-    #[allow(clippy::cast_precision_loss)] // degrees of freedom are far below 2^52
     pub fn student(&mut self, degrees: usize) -> f64 {
         if degrees >= self.student.len() {
             return student_t_quantile(self.upper, degrees as f64);

@@ -1,7 +1,7 @@
 //! Least-squares fit of some rows of a trial.
 
 use super::NoAnswer;
-use crate::numerics::kernels::Kernels;
+use crate::numerics::kernels::{Columns, Kernels};
 use crate::numerics::least_squares::LeastSquares;
 use crate::trial::Trial;
 use std::ops::Range;
@@ -30,6 +30,24 @@ enum State {
     Normal,
     /// The design is ill-conditioned; the rows were factored.
     Orthogonal(Box<LeastSquares>),
+}
+
+/// Rows of a trial with the stored columns of the analysis model.
+#[derive(Debug, Clone)]
+pub(super) struct ModelRows<'a> {
+    pub(super) trial: &'a Trial,
+    pub(super) rows: Range<usize>,
+    pub(super) stored: &'a [usize],
+}
+
+impl<'a> ModelRows<'a> {
+    pub(super) fn design(&self) -> Columns<'a> {
+        self.trial.design(self.rows.clone())
+    }
+
+    pub(super) fn outcomes(&self) -> &'a [f64] {
+        &self.trial.outcomes()[self.rows.clone()]
+    }
 }
 
 /// Scratch space that fits share.
@@ -62,30 +80,27 @@ impl Fit {
     /// given when the rows have not full column rank.
     pub(super) fn solve(
         &mut self,
-        trial: &Trial,
-        rows: Range<usize>,
-        stored: &[usize],
+        model: &ModelRows<'_>,
         deficient: NoAnswer,
         scratch: &mut FitScratch,
         kernels: Kernels,
     ) {
-        self.units = rows.len();
-        if rows.is_empty() {
+        self.units = model.rows.len();
+        if self.units == 0 {
             self.state = State::Failed(NoAnswer::EmptyBatch);
             return;
         }
-        if rows.len() < self.p {
+        if self.units < self.p {
             self.state = State::Failed(deficient);
             return;
         }
-        let outcomes = &trial.outcomes()[rows.clone()];
+        let outcomes = model.outcomes();
         let tolerance = kernels.cholesky(&mut self.factor, self.p, 0.0);
         if tolerance < TRUSTED_TOLERANCE {
             let mut orthogonal = Box::new(LeastSquares::new());
-            let start = rows.start;
-            let leading = trial.capacity();
-            let design = &trial.design_values()[start..];
-            match orthogonal.fit(design, leading, rows.len(), stored, outcomes) {
+            let leading = model.trial.capacity();
+            let design = &model.trial.design_values()[model.rows.start..];
+            match orthogonal.fit(design, leading, self.units, model.stored, outcomes) {
                 Ok(()) => {
                     self.coefficients.copy_from_slice(orthogonal.coefficients());
                     self.residual_squares = orthogonal.residual_sum_of_squares();
@@ -98,9 +113,9 @@ impl Fit {
         kernels.solve_lower(&self.factor, self.p, &mut self.coefficients);
         kernels.solve_lower_transposed(&self.factor, self.p, &mut self.coefficients);
         scratch.residuals.clear();
-        scratch.residuals.resize(rows.len(), 0.0);
+        scratch.residuals.resize(self.units, 0.0);
         let fitted = &mut scratch.residuals;
-        kernels.add_combination(trial.design(rows), stored, &self.coefficients, fitted);
+        kernels.add_combination(model.design(), model.stored, &self.coefficients, fitted);
         for (value, outcome) in fitted.iter_mut().zip(outcomes) {
             *value = outcome - *value;
         }
@@ -108,7 +123,10 @@ impl Fit {
         self.state = State::Normal;
     }
 
-    /// The reason why there is no fit, if there is none.
+    /// Whether there is a fit.
+    ///
+    /// # Errors
+    /// The reason why there is none.
     pub fn answered(&self) -> Result<(), NoAnswer> {
         match self.state {
             State::Failed(reason) => Err(reason),
@@ -152,68 +170,60 @@ impl Fit {
         scratch: &mut FitScratch,
         kernels: Kernels,
     ) -> f64 {
-        match &self.state {
-            State::Orthogonal(fit) => fit.contrast_variance(contrast),
-            _ => {
-                let vector = &mut scratch.vector;
-                vector.clear();
-                vector.extend_from_slice(contrast);
-                kernels.solve_lower(&self.factor, self.p, vector);
-                kernels.dot(vector, vector)
-            }
+        if let State::Orthogonal(fit) = &self.state {
+            return fit.contrast_variance(contrast);
         }
+        let vector = &mut scratch.vector;
+        vector.clear();
+        vector.extend_from_slice(contrast);
+        kernels.solve_lower(&self.factor, self.p, vector);
+        kernels.dot(vector, vector)
     }
 
     /// `a = X(X'X)^{-1}c`, so that `c'β̂ = a'y`.
     pub(super) fn contrast_weights(
         &self,
         contrast: &[f64],
-        trial: &Trial,
-        rows: Range<usize>,
-        stored: &[usize],
+        model: &ModelRows<'_>,
         scratch: &mut FitScratch,
         kernels: Kernels,
         out: &mut Vec<f64>,
     ) {
         out.clear();
-        out.resize(rows.len(), 0.0);
-        match &self.state {
-            State::Orthogonal(fit) => fit.contrast_weights(contrast, out),
-            _ => {
-                let vector = &mut scratch.vector;
-                vector.clear();
-                vector.extend_from_slice(contrast);
-                kernels.solve_lower(&self.factor, self.p, vector);
-                kernels.solve_lower_transposed(&self.factor, self.p, vector);
-                kernels.add_combination(trial.design(rows), stored, vector, out);
-            }
+        out.resize(self.units, 0.0);
+        if let State::Orthogonal(fit) = &self.state {
+            fit.contrast_weights(contrast, out);
+            return;
         }
+        let vector = &mut scratch.vector;
+        vector.clear();
+        vector.extend_from_slice(contrast);
+        kernels.solve_lower(&self.factor, self.p, vector);
+        kernels.solve_lower_transposed(&self.factor, self.p, vector);
+        kernels.add_combination(model.design(), model.stored, vector, out);
     }
 
     /// Leverages `h_i = x_i'(X'X)^{-1}x_i`.
     pub(super) fn leverages(
         &self,
-        trial: &Trial,
-        rows: Range<usize>,
-        stored: &[usize],
+        model: &ModelRows<'_>,
         whitened: &mut Vec<f64>,
         kernels: Kernels,
         out: &mut Vec<f64>,
     ) {
-        let count = rows.len();
+        let count = self.units;
         out.clear();
         out.resize(count, 0.0);
-        match &self.state {
-            State::Orthogonal(fit) => fit.leverages(out),
-            _ => {
-                whitened.clear();
-                whitened.resize(count * self.p, 0.0);
-                kernels.whiten(trial.design(rows), stored, &self.factor, whitened);
-                for column in whitened.chunks_exact(count) {
-                    for (leverage, value) in out.iter_mut().zip(column) {
-                        *leverage += value * value;
-                    }
-                }
+        if let State::Orthogonal(fit) = &self.state {
+            fit.leverages(out);
+            return;
+        }
+        whitened.clear();
+        whitened.resize(count * self.p, 0.0);
+        kernels.whiten(model.design(), model.stored, &self.factor, whitened);
+        for column in whitened.chunks_exact(count) {
+            for (leverage, value) in out.iter_mut().zip(column) {
+                *leverage += value * value;
             }
         }
     }

@@ -22,5 +22,9 @@ pub(super) fn estimate(bench: &mut Workbench, estimand: usize) -> Estimate {
         sum += point / unit;
     }
     let critical = bench.critical.student(degrees);
-    checked(Answer::symmetric(sum / total, (variance / total).sqrt(), critical))
+    checked(Answer::symmetric(
+        sum / total,
+        (variance / total).sqrt(),
+        critical,
+    ))
 }

@@ -14,7 +14,7 @@ use crate::trial::Trial;
 /// Valid when: the design was fixed in advance, or does not depend on earlier outcomes.
 /// Fails when: what was collected depends on earlier outcomes; worse as p/n grows.
 /// Cost: `O(p²)` per estimand; HC2 and HC3 add `O(np²)` once.
-/// Source: MacKinnon & White (1985) for the sandwich forms.
+/// Source: `MacKinnon` & White (1985) for the sandwich forms.
 pub(super) fn estimate(
     bench: &mut Workbench,
     trial: &Trial,
@@ -26,15 +26,24 @@ pub(super) fn estimate(
     if degrees == 0 {
         return Err(NoAnswer::NoResidualDegrees);
     }
-    let point = bench.pooled.point(&bench.contrasts[estimand], bench.kernels);
-    #[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
+    let point = bench
+        .pooled
+        .point(&bench.contrasts[estimand], bench.kernels);
     let squared_error = if variance == VarianceForm::Model {
         let contrast = &bench.contrasts[estimand];
-        let unit = bench.pooled.contrast_variance(contrast, &mut bench.scratch, bench.kernels);
+        let unit = bench
+            .pooled
+            .contrast_variance(contrast, &mut bench.scratch, bench.kernels);
         bench.pooled.residual_squares() / degrees as f64 * unit
     } else {
         bench.fill_contrast_weights(trial, estimand);
-        sandwich(&bench.weights, &bench.residuals, &bench.leverages, variance, degrees)
+        sandwich(
+            &bench.weights,
+            &bench.residuals,
+            &bench.leverages,
+            variance,
+            degrees,
+        )
     };
     let critical = bench.critical.student(degrees);
     checked(Answer::symmetric(point, squared_error.sqrt(), critical))
@@ -42,7 +51,6 @@ pub(super) fn estimate(
 
 /// `Σ a_i² ω_i`; leverages are read by HC2 and HC3 only. A leverage of one leaves a unit's
 /// residual without information and makes the result not finite.
-#[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
 fn sandwich(
     weights: &[f64],
     residuals: &[f64],
@@ -57,7 +65,11 @@ fn sandwich(
             .zip(leverages)
             .map(|(pair, h)| {
                 let left = 1.0 - h;
-                let divisor = if variance == VarianceForm::Hc2 { left } else { left * left };
+                let divisor = if variance == VarianceForm::Hc2 {
+                    left
+                } else {
+                    left * left
+                };
                 plain(pair) / divisor
             })
             .sum(),

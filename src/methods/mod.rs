@@ -23,7 +23,9 @@ use crate::trial::Trial;
 use ridge::RidgeScratch;
 
 /// The estimate of one method for one estimand, from a prepared workbench.
-#[must_use]
+///
+/// # Errors
+/// The reason why the method has no answer.
 pub fn estimate(
     method: &TunedMethod,
     bench: &mut Workbench,

@@ -54,7 +54,6 @@ pub(super) fn estimate(bench: &mut Workbench, estimand: usize, penalty: f64) -> 
         kernels.solve_lower(&scratch.factor, p, &mut scratch.unit);
         trace += kernels.dot(&scratch.unit, &scratch.unit);
     }
-    #[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
     let degrees = units as f64 - (p as f64 - penalty * trace);
     if degrees <= 0.0 {
         return Err(NoAnswer::NoResidualDegrees);

@@ -21,7 +21,6 @@ pub(super) fn estimate(bench: &mut Workbench, estimand: usize, batch: usize) -> 
     let contrast = &bench.contrasts[estimand];
     let point = fit.point(contrast, bench.kernels);
     let unit = fit.contrast_variance(contrast, &mut bench.scratch, bench.kernels);
-    #[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
     let standard_error = (fit.residual_squares() / degrees as f64 * unit).sqrt();
     let critical = bench.critical.student(degrees);
     checked(Answer::symmetric(point, standard_error, critical))

@@ -34,6 +34,7 @@ pub enum TunedMethod {
 }
 
 /// What a method reads; the workbench prepares no more than the scenario's methods need.
+#[allow(clippy::struct_excessive_bools)] // a set of independent needs
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
 pub struct Needs {
     /// The least-squares fit on all units.
@@ -81,15 +82,28 @@ impl TunedMethod {
                 ..nothing
             },
             // The ridge solves its own equations, from the pooled sums that come with the fit.
-            Self::Ridge { .. } => Needs { pooled_fit: true, ..nothing },
-            Self::FirstBatch => Needs { first_batch: true, ..nothing },
-            Self::LastBatch => Needs { last_batch: true, ..nothing },
-            Self::BatchCombined { .. } | Self::InverseVariance => {
-                Needs { every_batch: true, ..nothing }
-            }
-            Self::WDecorrelation { .. } => {
-                Needs { pooled_fit: true, residuals: true, rows_in_order: true, ..nothing }
-            }
+            Self::Ridge { .. } => Needs {
+                pooled_fit: true,
+                ..nothing
+            },
+            Self::FirstBatch => Needs {
+                first_batch: true,
+                ..nothing
+            },
+            Self::LastBatch => Needs {
+                last_batch: true,
+                ..nothing
+            },
+            Self::BatchCombined { .. } | Self::InverseVariance => Needs {
+                every_batch: true,
+                ..nothing
+            },
+            Self::WDecorrelation { .. } => Needs {
+                pooled_fit: true,
+                residuals: true,
+                rows_in_order: true,
+                ..nothing
+            },
         }
     }
 }

@@ -42,8 +42,11 @@ pub(super) fn estimate(bench: &mut Workbench, estimand: usize, penalty: f64) -> 
         },
     );
     let point = bench.pooled.point(contrast, kernels) + correction;
-    #[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
     let variance = bench.pooled.residual_squares() / degrees as f64;
     let critical = bench.critical.normal();
-    checked(Answer::symmetric(point, (variance * weight_squares).sqrt(), critical))
+    checked(Answer::symmetric(
+        point,
+        (variance * weight_squares).sqrt(),
+        critical,
+    ))
 }

@@ -1,8 +1,9 @@
 //! What methods share in one trial: fits, residuals, leverages, scratch space.
 
-use super::fit::FitScratch;
+use super::fit::{FitScratch, ModelRows};
 use super::{CriticalValues, Fit, Needs, NoAnswer, RidgeScratch};
 use crate::numerics::kernels::Kernels;
+use crate::plan::{Plan, Term};
 use crate::trial::{BatchSums, Trial};
 
 /// Fits of one trial, prepared once for all methods, in buffers that are reused.
@@ -38,21 +39,25 @@ pub struct Workbench {
 }
 
 impl Workbench {
-    /// A workbench for an analysis model on the stored columns `stored`, for at most `units`
-    /// units in `batches` batches, for methods that need `needs` at confidence level `level`.
+    /// A workbench for the analysis model of a plan, for methods that need `needs`.
+    ///
+    /// `stored` are the stored columns of the analysis model, `used` the columns that batch sums
+    /// are kept for. The contrasts are those of the first truth.
     #[must_use]
     pub fn new(
+        plan: &Plan,
         stored: &[usize],
         used: &[usize],
-        intercept: Option<usize>,
-        contrasts: Vec<Vec<f64>>,
-        batches: usize,
-        units: usize,
         needs: Needs,
-        level: f64,
         kernels: Kernels,
     ) -> Self {
         let p = stored.len();
+        let intercept = plan.analysis.position(Term::Intercept);
+        let contrasts = plan
+            .estimands
+            .iter()
+            .map(|e| e.contrasts[0].clone())
+            .collect();
         let positions = stored
             .iter()
             .filter_map(|column| used.iter().position(|candidate| candidate == column))
@@ -64,9 +69,9 @@ impl Workbench {
             contrasts,
             needs,
             kernels,
-            critical: CriticalValues::new(level, units),
+            critical: CriticalValues::new(plan.level, plan.units()),
             pooled: Fit::new(p),
-            batch_fits: (0..batches).map(|_| Fit::new(p)).collect(),
+            batch_fits: plan.batches.iter().map(|_| Fit::new(p)).collect(),
             gram: vec![0.0; p * p],
             cross: vec![0.0; p],
             residuals: Vec::new(),
@@ -109,7 +114,9 @@ impl Workbench {
     pub fn pooled_contrast(&mut self, estimand: usize) -> Option<(f64, f64)> {
         self.pooled.answered().ok()?;
         let contrast = &self.contrasts[estimand];
-        let variance = self.pooled.contrast_variance(contrast, &mut self.scratch, self.kernels);
+        let variance = self
+            .pooled
+            .contrast_variance(contrast, &mut self.scratch, self.kernels);
         Some((self.pooled.point(contrast, self.kernels), variance))
     }
 
@@ -124,34 +131,31 @@ impl Workbench {
     /// Prepares all that the methods need from a finished trial.
     pub fn prepare(&mut self, trial: &Trial, sums: &BatchSums) {
         let kernels = self.kernels;
-        let rows = 0..trial.rows();
         if self.needs.pooled_fit {
             let all = sums.prefix(sums.batches());
             all.total(&self.positions, &mut self.gram, &mut self.cross);
             let (gram, cross) = self.pooled.sums_mut();
             gram.copy_from_slice(&self.gram);
             cross.copy_from_slice(&self.cross);
-            self.pooled.solve(
+            let model = ModelRows {
                 trial,
-                rows.clone(),
-                &self.stored,
-                NoAnswer::RankDeficient,
-                &mut self.scratch,
-                kernels,
-            );
+                rows: 0..trial.rows(),
+                stored: &self.stored,
+            };
+            self.pooled
+                .solve(&model, NoAnswer::RankDeficient, &mut self.scratch, kernels);
             self.sum_of_outcome_squares = kernels.dot(trial.outcomes(), trial.outcomes());
             if self.needs.residuals && self.pooled.answered().is_ok() {
                 self.fill_residuals(trial);
             }
             if self.needs.leverages && self.pooled.answered().is_ok() {
-                self.pooled.leverages(
+                let model = ModelRows {
                     trial,
-                    rows,
-                    &self.stored,
-                    &mut self.whitened,
-                    kernels,
-                    &mut self.leverages,
-                );
+                    rows: 0..trial.rows(),
+                    stored: &self.stored,
+                };
+                self.pooled
+                    .leverages(&model, &mut self.whitened, kernels, &mut self.leverages);
             }
         }
         let last = self.batch_fits.len() - 1;
@@ -164,10 +168,13 @@ impl Workbench {
             }
             let (gram, cross) = fit.sums_mut();
             sums.batch_only(batch).total(&self.positions, gram, cross);
-            fit.solve(
+            let model = ModelRows {
                 trial,
-                trial.batch_rows(batch),
-                &self.stored,
+                rows: trial.batch_rows(batch),
+                stored: &self.stored,
+            };
+            fit.solve(
+                &model,
                 NoAnswer::BatchRankDeficient,
                 &mut self.scratch,
                 kernels,
@@ -184,7 +191,8 @@ impl Workbench {
         let fitted = &mut self.residuals;
         let coefficients = self.pooled.coefficients();
         let design = trial.design(0..trial.rows());
-        self.kernels.add_combination(design, &self.stored, coefficients, fitted);
+        self.kernels
+            .add_combination(design, &self.stored, coefficients, fitted);
         for (value, outcome) in fitted.iter_mut().zip(trial.outcomes()) {
             *value = outcome - *value;
         }
@@ -216,11 +224,14 @@ impl Workbench {
 
     /// `a = X(X'X)^{-1}c` of the pooled fit, into `weights`.
     pub(super) fn fill_contrast_weights(&mut self, trial: &Trial, estimand: usize) {
+        let model = ModelRows {
+            trial,
+            rows: 0..trial.rows(),
+            stored: &self.stored,
+        };
         self.pooled.contrast_weights(
             &self.contrasts[estimand],
-            trial,
-            0..trial.rows(),
-            &self.stored,
+            &model,
             &mut self.scratch,
             self.kernels,
             &mut self.weights,
@@ -239,7 +250,6 @@ impl Workbench {
         if degrees == 0 {
             return Err(NoAnswer::NoResidualDegrees);
         }
-        #[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
         Ok((squares / degrees as f64, degrees))
     }
 
@@ -249,7 +259,8 @@ impl Workbench {
         self.batch_values.clear();
         for fit in &self.batch_fits {
             let variance = fit.contrast_variance(contrast, &mut self.scratch, self.kernels);
-            self.batch_values.push((fit.point(contrast, self.kernels), variance));
+            self.batch_values
+                .push((fit.point(contrast, self.kernels), variance));
         }
     }
 }

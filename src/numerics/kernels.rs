@@ -28,8 +28,17 @@ impl<'a> Columns<'a> {
     /// If the rows do not fit into the leading dimension.
     #[must_use]
     pub fn new(values: &'a [f64], leading: usize, first: usize, rows: usize) -> Self {
-        assert!(first + rows <= leading, "rows {first}..{} of {leading}", first + rows);
-        Self { values, leading, first, rows }
+        assert!(
+            first + rows <= leading,
+            "rows {first}..{} of {leading}",
+            first + rows
+        );
+        Self {
+            values,
+            leading,
+            first,
+            rows,
+        }
     }
 
     /// Number of rows.
@@ -62,7 +71,9 @@ impl Kernels {
     /// The version for the widest instruction set that this processor has.
     #[must_use]
     pub fn detect() -> Self {
-        Self { arch: Some(Arch::new()) }
+        Self {
+            arch: Some(Arch::new()),
+        }
     }
 
     /// The version for the baseline instruction set.
@@ -341,7 +352,11 @@ fn cholesky(matrix: &mut [f64], p: usize, threshold: f64) -> f64 {
         }
         let pivot = target[0];
         // A zero or negative pivot, or a zero column, gives tolerance 0 (NaN is caught by `max`).
-        let tolerance = if original > 0.0 { (pivot / original).max(0.0) } else { 0.0 };
+        let tolerance = if original > 0.0 {
+            (pivot / original).max(0.0)
+        } else {
+            0.0
+        };
         smallest = smallest.min(tolerance);
         if tolerance > threshold {
             let scale = 1.0 / pivot.sqrt();
@@ -384,7 +399,9 @@ mod tests {
         let mut state = seed.wrapping_mul(2).wrapping_add(1);
         (0..rows * columns)
             .map(|_| {
-                state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695);
+                state = state
+                    .wrapping_mul(6_364_136_223_846_793_005)
+                    .wrapping_add(1_442_695);
                 f64::from(u32::try_from(state >> 33).unwrap()) / f64::from(1u32 << 30) - 1.0
             })
             .collect()

@@ -14,7 +14,7 @@ pub struct QuantileTable {
 impl QuantileTable {
     /// Tabulates `transform` over the range of a standard normal.
     #[must_use]
-    #[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss, clippy::cast_precision_loss)]
+    #[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss)]
     pub fn new(mut transform: impl FnMut(f64) -> f64) -> Self {
         let count = (2.0 * REACH * NODES_PER_UNIT) as usize + 3;
         let values = (0..count)
@@ -26,7 +26,7 @@ impl QuantileTable {
     /// The transform at `z`, by cubic interpolation through the four nearest nodes.
     #[must_use]
     #[inline]
-    #[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss, clippy::cast_precision_loss)]
+    #[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss)]
     pub fn at(&self, z: f64) -> f64 {
         let position = (z.clamp(-REACH, REACH) + REACH) * NODES_PER_UNIT;
         // The last interval is closed on the right, so that four nodes always exist.
@@ -86,6 +86,9 @@ mod tests {
             assert!((exponential.at(z) / expected - 1.0).abs() < 1e-8, "{z}");
             assert!((cubic.at(z) - z * z * z).abs() < 1e-9, "{z}");
         }
-        assert!((exponential.at(50.0) / (17.0f64).exp() - 1.0).abs() < 1e-8, "clamped");
+        assert!(
+            (exponential.at(50.0) / (17.0f64).exp() - 1.0).abs() < 1e-8,
+            "clamped"
+        );
     }
 }

@@ -26,9 +26,14 @@ impl OutcomeModel {
     #[must_use]
     pub fn new(truth: &Truth, design: &Design, batches: usize) -> Self {
         let first_covariate = design.first_covariate();
-        let nonzero = truth.slopes.iter().enumerate().filter(|&(_, &slope)| slope != 0.0);
-        let (columns, slopes) =
-            nonzero.map(|(column, &slope)| (first_covariate + column, slope)).unzip();
+        let nonzero = truth
+            .slopes
+            .iter()
+            .enumerate()
+            .filter(|&(_, &slope)| slope != 0.0);
+        let (columns, slopes) = nonzero
+            .map(|(column, &slope)| (first_covariate + column, slope))
+            .unzip();
         Self {
             truth: truth.clone(),
             columns,
@@ -57,7 +62,12 @@ impl OutcomeModel {
         scratch.clear();
         scratch.resize(2 * count, base);
         let (expected, noise) = scratch.split_at_mut(count);
-        kernels.add_combination(trial.design(rows.clone()), &self.columns, &self.slopes, expected);
+        kernels.add_combination(
+            trial.design(rows.clone()),
+            &self.columns,
+            &self.slopes,
+            expected,
+        );
         if !truth.arm_effects.is_empty() {
             for (value, &arm) in expected.iter_mut().zip(&trial.arms()[rows.clone()]) {
                 *value += truth.arm_effects[arm];
@@ -85,8 +95,11 @@ impl OutcomeModel {
             }
         }
         trial.expected_mut(rows.clone()).copy_from_slice(expected);
-        for ((outcome, mean), noise) in
-            trial.outcomes_mut(rows).iter_mut().zip(&*expected).zip(&*noise)
+        for ((outcome, mean), noise) in trial
+            .outcomes_mut(rows)
+            .iter_mut()
+            .zip(&*expected)
+            .zip(&*noise)
         {
             *outcome = mean + noise;
         }

@@ -18,9 +18,10 @@ impl NoiseTransform {
         match law {
             NoiseLaw::Normal => Self::Normal,
             // The variance of t(df) is df / (df - 2).
-            NoiseLaw::StudentT { df } => {
-                Self::Table { table: student_t_table(df), scale: ((df - 2.0) / df).sqrt() }
-            }
+            NoiseLaw::StudentT { df } => Self::Table {
+                table: student_t_table(df),
+                scale: ((df - 2.0) / df).sqrt(),
+            },
             NoiseLaw::Laplace => Self::Laplace,
             NoiseLaw::CentredLogNormal { log_sd } => {
                 let variance = log_sd * log_sd;
@@ -38,7 +39,9 @@ impl NoiseTransform {
         match self {
             Self::Normal => {}
             Self::Table { table, scale } => {
-                values.iter_mut().for_each(|value| *value = scale * table.at(*value));
+                for value in values {
+                    *value = scale * table.at(*value);
+                }
             }
             // Quantile -ln(2q)/√2 at upper tail probability q.
             Self::Laplace => {
@@ -80,7 +83,10 @@ mod tests {
             let mean: f64 = nodes.iter().zip(&weights).map(|(x, w)| x * w).sum();
             let variance: f64 = nodes.iter().zip(&weights).map(|(x, w)| x * x * w).sum();
             assert!(mean.abs() < 1e-6, "{law:?}: mean {mean}");
-            assert!((variance - 1.0).abs() < 1e-4, "{law:?}: variance {variance}");
+            assert!(
+                (variance - 1.0).abs() < 1e-4,
+                "{law:?}: variance {variance}"
+            );
         }
     }
 }

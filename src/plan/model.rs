@@ -80,7 +80,11 @@ impl Design {
                 }
             }
         }
-        Self { terms, arm_indicators, covariates }
+        Self {
+            terms,
+            arm_indicators,
+            covariates,
+        }
     }
 
     /// Number of stored columns.
@@ -103,10 +107,13 @@ impl Design {
 
     /// Stored columns that are interactions, with their arm and covariate column.
     pub fn interactions(&self) -> impl Iterator<Item = (usize, usize, usize)> + '_ {
-        self.terms.iter().enumerate().filter_map(|(stored, term)| match *term {
-            Term::ArmCovariate { arm, column } => Some((stored, arm, column)),
-            _ => None,
-        })
+        self.terms
+            .iter()
+            .enumerate()
+            .filter_map(|(stored, term)| match *term {
+                Term::ArmCovariate { arm, column } => Some((stored, arm, column)),
+                _ => None,
+            })
     }
 
     /// Stored column of each regressor of a model; the model must be among those that the design

@@ -68,12 +68,10 @@ pub enum Drift {
 impl Drift {
     /// Shift of the mean in batch `batch` (zero-based) of `batches`.
     #[must_use]
-    #[allow(clippy::cast_precision_loss)] // batch counts are far below 2^52
     pub fn shift(self, batch: usize, batches: usize) -> f64 {
         match self {
-            Self::None => 0.0,
             Self::Linear { total } if batches > 1 => total * batch as f64 / (batches - 1) as f64,
-            Self::Linear { .. } => 0.0,
+            Self::None | Self::Linear { .. } => 0.0,
             Self::Step { from, size } => {
                 if batch >= from {
                     size

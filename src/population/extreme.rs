@@ -52,7 +52,11 @@ impl LawSampler {
         let independent = &mut rest[..latent_count * size];
         let mut weights = std::mem::take(&mut pool.weights);
         self.latent_weights(extreme.slopes, &mut weights);
-        let norm = weights.iter().map(|weight| weight * weight).sum::<f64>().sqrt();
+        let norm = weights
+            .iter()
+            .map(|weight| weight * weight)
+            .sum::<f64>()
+            .sqrt();
         corrections.fill(0.0);
         for (index, column) in independent.chunks_exact_mut(size).enumerate() {
             let mut stream = streams.open(Purpose::Candidates, batch, part, index);
@@ -66,7 +70,6 @@ impl LawSampler {
         }
         if norm > 0.0 {
             let mut stream = streams.open(Purpose::Candidates, batch, part, ORDER_STATISTICS);
-            #[allow(clippy::cast_precision_loss)] // candidate counts are far below 2^52
             let left_out = Beta::new(size as f64 + 1.0, (candidates - size) as f64)
                 .map_or(1.0, |law| law.sample(&mut stream));
             let sign = match extreme.tail {

@@ -39,17 +39,24 @@ impl LawSampler {
     /// Whether every covariate is normal.
     #[must_use]
     pub fn is_gaussian(&self) -> bool {
-        self.transforms.iter().all(|transform| matches!(transform, Transform::Affine { .. }))
+        self.transforms
+            .iter()
+            .all(|transform| matches!(transform, Transform::Affine { .. }))
     }
 
     /// Weights on the independent latent normals of a score with the given slopes on the
     /// covariate columns of a Gaussian population: `w = L'Db`.
     pub(super) fn latent_weights(&self, slopes: &[f64], out: &mut Vec<f64>) {
         out.clear();
-        out.extend(self.transforms.iter().zip(slopes).map(|(transform, slope)| match transform {
-            Transform::Affine { scale, .. } => scale * slope,
-            _ => 0.0,
-        }));
+        out.extend(
+            self.transforms
+                .iter()
+                .zip(slopes)
+                .map(|(transform, slope)| match transform {
+                    Transform::Affine { scale, .. } => scale * slope,
+                    _ => 0.0,
+                }),
+        );
         match &self.correlation {
             CorrelationFactor::Identity => {}
             CorrelationFactor::Autoregressive(rho) => {
@@ -57,14 +64,19 @@ impl LawSampler {
                 let mut later = 0.0;
                 for (index, weight) in out.iter_mut().enumerate().rev() {
                     later = *weight + rho * later;
-                    *weight = if index == 0 { later } else { innovation * later };
+                    *weight = if index == 0 {
+                        later
+                    } else {
+                        innovation * later
+                    };
                 }
             }
             CorrelationFactor::Lower(factor) => {
                 // Entry j needs the values at j and after, so it can be replaced in order.
                 for column in 0..out.len() {
-                    out[column] =
-                        (column..out.len()).map(|row| factor[(row, column)] * out[row]).sum();
+                    out[column] = (column..out.len())
+                        .map(|row| factor[(row, column)] * out[row])
+                        .sum();
                 }
             }
         }
@@ -81,7 +93,11 @@ impl LawSampler {
             match &self.correlation {
                 CorrelationFactor::Identity => transform.fill(0, own, pool.column_mut(column)),
                 CorrelationFactor::Autoregressive(rho) => {
-                    let innovation = if index == 0 { 1.0 } else { (1.0 - rho * rho).sqrt() };
+                    let innovation = if index == 0 {
+                        1.0
+                    } else {
+                        (1.0 - rho * rho).sqrt()
+                    };
                     for (z, e) in scratch.iter_mut().zip(own) {
                         *z = rho * *z + innovation * e;
                     }

@@ -15,7 +15,11 @@ pub(super) enum Transform {
     /// `exp(location + scale × z)`.
     Exponential { location: f64, scale: f64 },
     /// `location + scale × table(z)`.
-    Table { table: QuantileTable, location: f64, scale: f64 },
+    Table {
+        table: QuantileTable,
+        location: f64,
+        scale: f64,
+    },
     /// Number of cut points below `z`.
     Count { cuts: Vec<f64> },
     /// Indicators that the number of cut points below `z` is 1, 2, ...
@@ -40,22 +44,35 @@ fn normal_upper_tail(z: f64) -> f64 {
 impl Transform {
     pub(super) fn new(marginal: &Marginal) -> Self {
         match marginal {
-            &Marginal::Normal { mean, sd } => Self::Affine { location: mean, scale: sd },
-            &Marginal::Uniform { low, high } => Self::Uniform { low, range: high - low },
-            &Marginal::LogNormal { log_mean, log_sd } => {
-                Self::Exponential { location: log_mean, scale: log_sd }
-            }
+            &Marginal::Normal { mean, sd } => Self::Affine {
+                location: mean,
+                scale: sd,
+            },
+            &Marginal::Uniform { low, high } => Self::Uniform {
+                low,
+                range: high - low,
+            },
+            &Marginal::LogNormal { log_mean, log_sd } => Self::Exponential {
+                location: log_mean,
+                scale: log_sd,
+            },
             &Marginal::Gamma { shape, scale } => Self::Table {
                 table: QuantileTable::new(|z| standard_gamma_quantile(shape, z)),
                 location: 0.0,
                 scale,
             },
-            &Marginal::StudentT { df, location, scale } => {
-                Self::Table { table: student_t_table(df), location, scale }
-            }
-            &Marginal::Bernoulli { probability } => {
-                Self::Count { cuts: vec![cut(1.0 - probability)] }
-            }
+            &Marginal::StudentT {
+                df,
+                location,
+                scale,
+            } => Self::Table {
+                table: student_t_table(df),
+                location,
+                scale,
+            },
+            &Marginal::Bernoulli { probability } => Self::Count {
+                cuts: vec![cut(1.0 - probability)],
+            },
             Marginal::Categorical { probabilities } => {
                 let mut total = 0.0;
                 let last = probabilities.len() - 1;
@@ -68,7 +85,9 @@ impl Transform {
                     .collect();
                 Self::Levels { cuts }
             }
-            &Marginal::Poisson { mean } => Self::Count { cuts: poisson_cuts(mean) },
+            &Marginal::Poisson { mean } => Self::Count {
+                cuts: poisson_cuts(mean),
+            },
         }
     }
 
@@ -91,10 +110,13 @@ impl Transform {
             Self::Exponential { location, scale } => {
                 pairs.for_each(|(x, z)| *x = libm::exp(location + scale * z));
             }
-            Self::Table { table, location, scale } => {
+            Self::Table {
+                table,
+                location,
+                scale,
+            } => {
                 pairs.for_each(|(x, &z)| *x = location + scale * table.at(z));
             }
-            #[allow(clippy::cast_precision_loss)] // counts are far below 2^52
             Self::Count { cuts } => {
                 pairs.for_each(|(x, &z)| *x = cuts.partition_point(|&cut| cut < z) as f64);
             }
@@ -165,16 +187,28 @@ mod tests {
 
     #[test]
     fn transforms_reproduce_the_distribution_function() {
-        for (shape, z) in [(0.3, -2.0), (0.3, 1.5), (2.5, -1.0), (2.5, 3.0), (40.0, 0.2)] {
+        for (shape, z) in [
+            (0.3, -2.0),
+            (0.3, 1.5),
+            (2.5, -1.0),
+            (2.5, 3.0),
+            (40.0, 0.2),
+        ] {
             let table = QuantileTable::new(|z| standard_gamma_quantile(shape, z));
             let law = Gamma::new(shape, 1.0).unwrap();
             let expected = normal_upper_tail(-z);
-            assert!((law.cdf(table.at(z)) - expected).abs() < 1e-8, "gamma {shape} at {z}");
+            assert!(
+                (law.cdf(table.at(z)) - expected).abs() < 1e-8,
+                "gamma {shape} at {z}"
+            );
         }
         for (df, z) in [(3.0, -2.5), (3.0, 0.7), (8.0, 1.9), (100.0, -0.1)] {
             let law = StudentsT::new(0.0, 1.0, df).unwrap();
             let found = law.cdf(student_t_table(df).at(z));
-            assert!((found - normal_upper_tail(-z)).abs() < 1e-8, "t {df} at {z}");
+            assert!(
+                (found - normal_upper_tail(-z)).abs() < 1e-8,
+                "t {df} at {z}"
+            );
         }
     }
 
@@ -185,15 +219,19 @@ mod tests {
         let mut below = 0.0;
         for (count, &cut) in cuts.iter().enumerate().take(12) {
             let cumulative = normal_upper_tail(-cut);
-            assert!((cumulative - below - law.pmf(count as u64)).abs() < 1e-9, "{count}");
+            assert!(
+                (cumulative - below - law.pmf(count as u64)).abs() < 1e-9,
+                "{count}"
+            );
             below = cumulative;
         }
     }
 
     #[test]
     fn levels_are_reference_coded() {
-        let transform =
-            Transform::new(&Marginal::Categorical { probabilities: vec![0.2, 0.5, 0.3] });
+        let transform = Transform::new(&Marginal::Categorical {
+            probabilities: vec![0.2, 0.5, 0.3],
+        });
         let latent = [-1.5, -0.5, 0.0, 1.5];
         let mut second = [9.0; 4];
         let mut third = [9.0; 4];

@@ -61,7 +61,14 @@ impl Sampler {
     ///
     /// Candidates from a roster are drawn without replacement from the units that are not yet
     /// enrolled; `pool` keeps track of them.
-    pub fn draw(&self, streams: &Streams, batch: usize, part: usize, count: usize, pool: &mut Pool) {
+    pub fn draw(
+        &self,
+        streams: &Streams,
+        batch: usize,
+        part: usize,
+        count: usize,
+        pool: &mut Pool,
+    ) {
         match self {
             Self::Law(law) => law.draw(streams, batch, part, count, pool),
             Self::Roster(roster) => roster.draw(streams, batch, part, count, pool),

@@ -19,7 +19,11 @@ impl RosterSampler {
     pub fn new(roster: &Roster) -> Self {
         let rows = roster.len();
         let columns = roster.values.len().checked_div(rows).unwrap_or(0);
-        Self { rows, columns, values: roster.values.clone() }
+        Self {
+            rows,
+            columns,
+            values: roster.values.clone(),
+        }
     }
 
     /// Number of units in the roster.

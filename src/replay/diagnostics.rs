@@ -34,14 +34,21 @@ fn without_adaptation(plan: &Plan) -> Plan {
             part.candidates = part.size;
         }
         if batch.allocate.is_some() {
-            batch.allocate =
-                Some(Allocation { rule: AllocationRule::Equal, floor: 0.0, draw: Draw::Quota });
+            batch.allocate = Some(Allocation {
+                rule: AllocationRule::Equal,
+                floor: 0.0,
+                draw: Draw::Quota,
+            });
         }
     }
     fixed
 }
 
-#[allow(clippy::cast_precision_loss, clippy::cast_possible_truncation, clippy::cast_sign_loss)]
+#[allow(
+    clippy::cast_precision_loss,
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss
+)]
 fn trials_for(p: usize, trials: u64) -> u64 {
     let affordable = (EIGENVALUE_BUDGET / (p as f64).powi(3)) as u64;
     affordable.clamp(FEWEST_TRIALS, TRIALS).min(trials)
@@ -52,7 +59,10 @@ fn describe(study: &Study, truth: usize, prefix: &str, out: &mut Vec<OperatingVa
     let kernels = study.kernels();
     let p = study.analysis().len();
     let trials = trials_for(p, plan.precision.trials);
-    let needs = Needs { pooled_fit: true, ..Needs::default() };
+    let needs = Needs {
+        pooled_fit: true,
+        ..Needs::default()
+    };
     let mut worker = Worker::with_needs(study, needs);
     worker.set_truth(truth);
     let mut grams: Vec<Vec<f64>> = Vec::new();
@@ -94,10 +104,17 @@ fn describe(study: &Study, truth: usize, prefix: &str, out: &mut Vec<OperatingVa
         let used = list.len();
         let count = (used as f64).sqrt();
         let variation = variance_error * count / variance_mean;
-        push("variance-factor-cv", name, variation, variation / (2.0 * used as f64).sqrt(), used);
-        for (key, other) in
-            [("variance-error-correlation", &points), ("variance-squared-error-correlation", &squares)]
-        {
+        push(
+            "variance-factor-cv",
+            name,
+            variation,
+            variation / (2.0 * used as f64).sqrt(),
+            used,
+        );
+        for (key, other) in [
+            ("variance-error-correlation", &points),
+            ("variance-squared-error-correlation", &squares),
+        ] {
             let r = correlation(&variances, other);
             push(key, name, r, (1.0 - r * r) / count, used);
         }
@@ -124,7 +141,9 @@ fn stability(grams: &[Vec<f64>], p: usize, kernels: Kernels) -> Option<Vec<f64>>
             kernels.solve_lower(&mean, p, column);
         }
         let eigenvalues = whole.symmetric_eigenvalues();
-        eigenvalues.iter().fold(0.0f64, |norm, value| norm.max((value - 1.0).abs()))
+        eigenvalues
+            .iter()
+            .fold(0.0f64, |norm, value| norm.max((value - 1.0).abs()))
     });
     Some(norms.collect())
 }
@@ -132,7 +151,10 @@ fn stability(grams: &[Vec<f64>], p: usize, kernels: Kernels) -> Option<Vec<f64>>
 fn mean_and_error(values: &[f64]) -> (f64, f64) {
     let count = values.len() as f64;
     let mean = values.iter().sum::<f64>() / count;
-    let squares: f64 = values.iter().map(|value| (value - mean) * (value - mean)).sum();
+    let squares: f64 = values
+        .iter()
+        .map(|value| (value - mean) * (value - mean))
+        .sum();
     (mean, (squares / (count - 1.0) / count).sqrt())
 }
 

@@ -82,7 +82,12 @@ pub enum ReplayError {
 
 /// Simulates and scores one block of trials of a truth.
 #[must_use]
-pub fn simulate_block(worker: &mut Worker<'_>, truth: usize, first: u64, trials: u64) -> BlockRecord {
+pub fn simulate_block(
+    worker: &mut Worker<'_>,
+    truth: usize,
+    first: u64,
+    trials: u64,
+) -> BlockRecord {
     let mut record = BlockRecord::default();
     worker.set_truth(truth);
     for index in first..first + trials {
@@ -101,8 +106,16 @@ pub fn layout(study: &Study, truth: usize) -> Layout {
         methods: plan.methods.len(),
         arms: plan.arm_count(),
         reference: plan.verdicts.reference,
-        true_values: study.true_values(truth).iter().map(|value| value.value).collect(),
-        nulls: plan.estimands.iter().map(|estimand| estimand.null).collect(),
+        true_values: study
+            .true_values(truth)
+            .iter()
+            .map(|value| value.value)
+            .collect(),
+        nulls: plan
+            .estimands
+            .iter()
+            .map(|estimand| estimand.null)
+            .collect(),
         level: plan.level,
     }
 }
@@ -111,8 +124,13 @@ pub fn layout(study: &Study, truth: usize) -> Layout {
 ///
 /// # Errors
 /// When interrupted, when the sink fails, or when threads cannot be started.
-pub fn replay(study: &Study, options: &mut ReplayOptions<'_>) -> Result<Vec<TruthResult>, ReplayError> {
-    let threads = rayon::ThreadPoolBuilder::new().num_threads(options.threads).build()?;
+pub fn replay(
+    study: &Study,
+    options: &mut ReplayOptions<'_>,
+) -> Result<Vec<TruthResult>, ReplayError> {
+    let threads = rayon::ThreadPoolBuilder::new()
+        .num_threads(options.threads)
+        .build()?;
     let plan = study.plan();
     let trials = plan.precision.trials;
     let total = trials * plan.truths.len() as u64;
@@ -157,9 +175,14 @@ pub fn replay(study: &Study, options: &mut ReplayOptions<'_>) -> Result<Vec<Trut
         }
         let mut measures = tally.measures(truth, &plan.arms);
         if options.diagnostics {
-            measures.operating.extend(threads.install(|| diagnostics::operating(study, truth)));
+            measures
+                .operating
+                .extend(threads.install(|| diagnostics::operating(study, truth)));
         }
-        results.push(TruthResult { measures, distributions: tally.distributions() });
+        results.push(TruthResult {
+            measures,
+            distributions: tally.distributions(),
+        });
     }
     Ok(results)
 }
@@ -170,9 +193,15 @@ fn options_interrupted(flag: &AtomicBool) -> bool {
 
 fn take<'a>(workers: &Mutex<Vec<Worker<'a>>>) -> Option<Worker<'a>> {
     // A worker is whole whatever happened to the thread that held the lock.
-    workers.lock().unwrap_or_else(std::sync::PoisonError::into_inner).pop()
+    workers
+        .lock()
+        .unwrap_or_else(std::sync::PoisonError::into_inner)
+        .pop()
 }
 
 fn give_back<'a>(workers: &Mutex<Vec<Worker<'a>>>, worker: Worker<'a>) {
-    workers.lock().unwrap_or_else(std::sync::PoisonError::into_inner).push(worker);
+    workers
+        .lock()
+        .unwrap_or_else(std::sync::PoisonError::into_inner)
+        .push(worker);
 }

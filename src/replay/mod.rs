@@ -8,8 +8,8 @@ mod study;
 mod worker;
 
 pub use engine::{
-    BLOCK_TRIALS, Interrupted, Progress, ReplayError, ReplayOptions, TrialSink, TruthResult, layout, replay,
-    simulate_block,
+    BLOCK_TRIALS, Interrupted, Progress, ReplayError, ReplayOptions, TrialSink, TruthResult,
+    layout, replay, simulate_block,
 };
 pub use pilot::Pilot;
 pub use study::{Study, TrueValue};

@@ -22,10 +22,13 @@ pub struct Pilot {
 impl Pilot {
     /// Replays the pilot trials of a study.
     #[must_use]
-    #[allow(clippy::cast_precision_loss)] // unit and trial counts are far below 2^52
     pub(super) fn run(study: &Study) -> Self {
         let plan = study.plan();
-        let needs = Needs { pooled_fit: true, every_batch: true, ..Needs::default() };
+        let needs = Needs {
+            pooled_fit: true,
+            every_batch: true,
+            ..Needs::default()
+        };
         let mut worker = Worker::with_needs(study, needs);
         let estimands = plan.estimands.len();
         let batches = plan.batches.len();
@@ -67,11 +70,12 @@ impl Pilot {
 }
 
 /// Scales to sum one; equal weights when nothing is known.
-#[allow(clippy::cast_precision_loss)] // batch counts are small
 fn normalised(mut weights: Vec<f64>) -> Vec<f64> {
     let total: f64 = weights.iter().sum();
     if total > 0.0 {
-        weights.iter_mut().for_each(|weight| *weight /= total);
+        for weight in &mut weights {
+            *weight /= total;
+        }
     } else {
         let equal = 1.0 / weights.len() as f64;
         weights.fill(equal);

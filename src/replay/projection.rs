@@ -34,7 +34,9 @@ pub(super) fn true_values(study: &Study) -> Vec<Vec<TrueValue>> {
             .collect();
         return vec![values];
     }
-    (0..plan.truths.len()).map(|truth| under_truth(study, truth)).collect()
+    (0..plan.truths.len())
+        .map(|truth| under_truth(study, truth))
+        .collect()
 }
 
 fn combine(contrast: &[f64], coefficients: &[f64]) -> f64 {
@@ -44,14 +46,21 @@ fn combine(contrast: &[f64], coefficients: &[f64]) -> f64 {
 fn under_truth(study: &Study, index: usize) -> Vec<TrueValue> {
     let plan = study.plan();
     let truth = &plan.truths[index];
-    let included: Vec<f64> =
-        plan.analysis.terms.iter().map(|&term| coefficient(truth, term)).collect();
+    let included: Vec<f64> = plan
+        .analysis
+        .terms
+        .iter()
+        .map(|&term| coefficient(truth, term))
+        .collect();
     let omitted = omitted_terms(truth, &plan.analysis);
     let (projection, errors) = if omitted.is_empty() {
         (vec![0.0; included.len()], vec![0.0; plan.estimands.len()])
     } else {
-        let contrasts: Vec<&[f64]> =
-            plan.estimands.iter().map(|e| e.contrasts[index].as_slice()).collect();
+        let contrasts: Vec<&[f64]> = plan
+            .estimands
+            .iter()
+            .map(|e| e.contrasts[index].as_slice())
+            .collect();
         project(study, &omitted, &contrasts)
     };
     plan.estimands
@@ -71,9 +80,10 @@ fn coefficient(truth: &Truth, term: Term) -> f64 {
         Term::Intercept => truth.intercept,
         Term::Arm(arm) => truth.arm_effects.get(arm).copied().unwrap_or(0.0),
         Term::Covariate(column) => truth.slopes[column],
-        Term::ArmCovariate { arm, column } => {
-            truth.interactions.get(arm).map_or(0.0, |slopes| slopes[column])
-        }
+        Term::ArmCovariate { arm, column } => truth
+            .interactions
+            .get(arm)
+            .map_or(0.0, |slopes| slopes[column]),
     }
 }
 
@@ -103,7 +113,12 @@ struct Sample<'a> {
 impl<'a> Sample<'a> {
     fn new(study: &'a Study) -> Self {
         let pool = Pool::new(study.design().covariates);
-        Self { study, pool, rows: Vec::new(), part: Vec::new() }
+        Self {
+            study,
+            pool,
+            rows: Vec::new(),
+            part: Vec::new(),
+        }
     }
 
     /// Calls `visit(model rows, omitted part)` for every chunk and arm, always the same sample.
@@ -119,7 +134,9 @@ impl<'a> Sample<'a> {
             let streams = Streams::new(plan.precision.seed, Phase::Projection, chunk as u64);
             self.pool.reset(roster_rows);
             let count = if roster_rows > 0 { roster_rows } else { CHUNK };
-            self.study.sampler().draw(&streams, 0, 0, count, &mut self.pool);
+            self.study
+                .sampler()
+                .draw(&streams, 0, 0, count, &mut self.pool);
             for arm in 0..arms {
                 self.rows.clear();
                 for &term in &plan.analysis.terms {
@@ -159,11 +176,7 @@ fn add_term(pool: &Pool, term: Term, own: usize, factor: f64, out: &mut [f64]) {
 
 /// Coefficients of the omitted part on the analysis model, and the Monte Carlo standard error of
 /// each contrast of them.
-fn project(
-    study: &Study,
-    omitted: &[(Term, f64)],
-    contrasts: &[&[f64]],
-) -> (Vec<f64>, Vec<f64>) {
+fn project(study: &Study, omitted: &[(Term, f64)], contrasts: &[&[f64]]) -> (Vec<f64>, Vec<f64>) {
     let kernels: Kernels = study.kernels();
     let p = study.analysis().len();
     let all: Vec<usize> = (0..p).collect();
@@ -205,7 +218,10 @@ fn project(
             weights.clear();
             weights.resize(part.len(), 0.0);
             kernels.add_combination(rows, &all, direction, &mut weights);
-            let products = weights.iter().zip(&residuals).map(|(w, r)| (w * r) * (w * r));
+            let products = weights
+                .iter()
+                .zip(&residuals)
+                .map(|(w, r)| (w * r) * (w * r));
             *variance += products.sum::<f64>();
         }
     });

@@ -4,7 +4,7 @@ use super::{Pilot, projection};
 use crate::methods::{Needs, TunedMethod};
 use crate::numerics::kernels::Kernels;
 use crate::outcome::OutcomeModel;
-use crate::plan::{BatchWeights, DebiasingPenalty, Design, MethodKind, Plan, Source, Term};
+use crate::plan::{BatchWeights, DebiasingPenalty, Design, MethodKind, Plan, Source};
 use crate::population::Sampler;
 
 /// True value of an estimand under one truth.
@@ -47,12 +47,19 @@ impl Study {
         let wants_pilot = plan.methods.iter().any(|method| {
             matches!(
                 method.kind,
-                MethodKind::BatchCombined { weights: BatchWeights::Planned }
-                    | MethodKind::WDecorrelation { penalty: DebiasingPenalty::Replayed }
+                MethodKind::BatchCombined {
+                    weights: BatchWeights::Planned
+                } | MethodKind::WDecorrelation {
+                    penalty: DebiasingPenalty::Replayed
+                }
             )
         });
         study.pilot = wants_pilot.then(|| Pilot::run(&study));
-        study.methods = plan.methods.iter().map(|method| study.tune(&method.kind)).collect();
+        study.methods = plan
+            .methods
+            .iter()
+            .map(|method| study.tune(&method.kind))
+            .collect();
         study.needs = study
             .methods
             .iter()
@@ -67,7 +74,12 @@ impl Study {
         let design = plan.design();
         let analysis = design.columns_of(&plan.analysis);
         let mut used = analysis.clone();
-        for fit in plan.batches.iter().flat_map(|b| &b.select).filter_map(|part| part.rule.fit()) {
+        for fit in plan
+            .batches
+            .iter()
+            .flat_map(|b| &b.select)
+            .filter_map(|part| part.rule.fit())
+        {
             used.extend(design.columns_of(&fit.model));
         }
         used.sort_unstable();
@@ -116,9 +128,9 @@ impl Study {
     fn tune(&self, kind: &MethodKind) -> TunedMethod {
         let estimands = self.plan.estimands.len();
         match kind {
-            MethodKind::LeastSquares { variance } => {
-                TunedMethod::LeastSquares { variance: *variance }
-            }
+            MethodKind::LeastSquares { variance } => TunedMethod::LeastSquares {
+                variance: *variance,
+            },
             MethodKind::Ridge { penalty } => TunedMethod::Ridge { penalty: *penalty },
             MethodKind::FirstBatch => TunedMethod::FirstBatch,
             MethodKind::LastBatch => TunedMethod::LastBatch,
@@ -127,10 +139,7 @@ impl Study {
                 let fixed = |row: Vec<f64>| vec![row; estimands];
                 let weights = match weights {
                     BatchWeights::Size => fixed(self.size_weights()),
-                    BatchWeights::Equal => {
-                        #[allow(clippy::cast_precision_loss)] // batch counts are small
-                        fixed(vec![1.0 / self.batches() as f64; self.batches()])
-                    }
+                    BatchWeights::Equal => fixed(vec![1.0 / self.batches() as f64; self.batches()]),
                     BatchWeights::Given(row) => fixed(row.clone()),
                     BatchWeights::Planned => match &self.pilot {
                         Some(pilot) => pilot.planned_weights.clone(),
@@ -148,11 +157,13 @@ impl Study {
             },
         }
     }
-
-    #[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
     fn size_weights(&self) -> Vec<f64> {
         let units = self.plan.units() as f64;
-        self.plan.batches.iter().map(|batch| batch.size as f64 / units).collect()
+        self.plan
+            .batches
+            .iter()
+            .map(|batch| batch.size as f64 / units)
+            .collect()
     }
 
     /// The plan.
@@ -177,12 +188,6 @@ impl Study {
     #[must_use]
     pub fn analysis(&self) -> &[usize] {
         &self.analysis
-    }
-
-    /// Position of the intercept in the analysis model.
-    #[must_use]
-    pub fn intercept(&self) -> Option<usize> {
-        self.plan.analysis.position(Term::Intercept)
     }
 
     /// Where candidates come from.
@@ -240,12 +245,5 @@ impl Study {
     #[must_use]
     pub fn kernels(&self) -> Kernels {
         self.kernels
-    }
-
-    /// Contrasts of the estimands under a truth.
-    #[must_use]
-    pub fn contrasts(&self, truth: usize) -> Vec<Vec<f64>> {
-        let estimands = self.plan.estimands.iter();
-        estimands.map(|estimand| estimand.contrasts[truth].clone()).collect()
     }
 }

@@ -44,7 +44,13 @@ impl<'a> Worker<'a> {
         let selectors = plan
             .batches
             .iter()
-            .map(|batch| batch.select.iter().map(|p| Selector::new(p, design, used)).collect())
+            .map(|batch| {
+                batch
+                    .select
+                    .iter()
+                    .map(|p| Selector::new(p, design, used))
+                    .collect()
+            })
             .collect();
         let allocators = plan
             .batches
@@ -61,17 +67,7 @@ impl<'a> Worker<'a> {
             pool: Pool::new(design.covariates),
             selectors,
             allocators,
-            bench: Workbench::new(
-                study.analysis(),
-                used,
-                study.intercept(),
-                study.contrasts(0),
-                plan.batches.len(),
-                units,
-                needs,
-                plan.level,
-                study.kernels(),
-            ),
+            bench: Workbench::new(plan, study.analysis(), used, needs, study.kernels()),
             chosen: Vec::new(),
             scratch: Vec::new(),
             kernels: study.kernels(),
@@ -111,30 +107,43 @@ impl<'a> Worker<'a> {
         let selector = &mut self.selectors[batch][part];
         let sampler = self.study.sampler();
         let past = Past::new(&self.trial, &self.sums, due);
-        let extreme =
-            if self.study.draws_extremes() { selector.extreme(&past, self.kernels) } else { None };
+        let extreme = if self.study.draws_extremes() {
+            selector.extreme(&past, self.kernels)
+        } else {
+            None
+        };
         if let Some(extreme) = extreme {
             sampler.draw_extreme(streams, batch, part, &extreme, &mut self.pool);
             let everyone = 0..self.pool.count();
             self.chosen.clear();
-            self.chosen.extend(
-                everyone.map(|candidate| Choice { candidate, probability: f64::NAN }),
-            );
+            self.chosen.extend(everyone.map(|candidate| Choice {
+                candidate,
+                probability: f64::NAN,
+            }));
         } else {
             sampler.draw(streams, batch, part, selector.candidates(), &mut self.pool);
             let mut stream = streams.open(Purpose::Selection, batch, part, 0);
-            selector.choose(&past, &self.pool, &mut stream, self.kernels, &mut self.chosen);
+            selector.choose(
+                &past,
+                &self.pool,
+                &mut stream,
+                self.kernels,
+                &mut self.chosen,
+            );
         }
         let first = self.trial.rows();
         for choice in &self.chosen {
-            self.trial.push_unit(self.pool.source(choice.candidate), choice.probability);
+            self.trial
+                .push_unit(self.pool.source(choice.candidate), choice.probability);
             self.pool.enrol(choice.candidate);
         }
         let rows = first..self.trial.rows();
         let design = self.study.design();
         for column in 0..design.covariates {
             let source = self.pool.covariates().column(column);
-            let target = self.trial.column_mut(design.first_covariate() + column, rows.clone());
+            let target = self
+                .trial
+                .column_mut(design.first_covariate() + column, rows.clone());
             for (value, choice) in target.iter_mut().zip(&self.chosen) {
                 *value = source[choice.candidate];
             }
@@ -149,11 +158,20 @@ impl<'a> Worker<'a> {
         due: usize,
         rows: std::ops::Range<usize>,
     ) {
-        let Some(allocator) = &mut self.allocators[batch] else { return };
+        let Some(allocator) = &mut self.allocators[batch] else {
+            return;
+        };
         let mut stream = streams.open(Purpose::Allocation, batch, 0, 0);
         let past = Past::new(&self.trial, &self.sums, due);
-        allocator.allocate(&past, self.trial.design(rows.clone()), &mut stream, self.kernels);
-        self.trial.arms_mut(rows.clone()).copy_from_slice(allocator.arms());
+        allocator.allocate(
+            &past,
+            self.trial.design(rows.clone()),
+            &mut stream,
+            self.kernels,
+        );
+        self.trial
+            .arms_mut(rows.clone())
+            .copy_from_slice(allocator.arms());
         self.trial
             .allocation_probabilities_mut(rows.clone())
             .copy_from_slice(allocator.probabilities());
@@ -193,7 +211,14 @@ impl<'a> Worker<'a> {
             return;
         }
         let model = self.study.outcome(truth);
-        model.fill(streams, batch, rows, &mut self.trial, &mut self.scratch, self.kernels);
+        model.fill(
+            streams,
+            batch,
+            rows,
+            &mut self.trial,
+            &mut self.scratch,
+            self.kernels,
+        );
     }
 
     /// The trial simulated last.
@@ -204,8 +229,11 @@ impl<'a> Worker<'a> {
 
     /// Points the workbench at the contrasts of a truth.
     pub fn set_truth(&mut self, truth: usize) {
-        for (target, estimand) in
-            self.bench.contrasts_mut().iter_mut().zip(&self.study.plan().estimands)
+        for (target, estimand) in self
+            .bench
+            .contrasts_mut()
+            .iter_mut()
+            .zip(&self.study.plan().estimands)
         {
             target.copy_from_slice(&estimand.contrasts[truth]);
         }
@@ -218,12 +246,13 @@ impl<'a> Worker<'a> {
     }
 
     /// Applies every method to the trial simulated last and appends the results to `record`.
-    #[allow(clippy::cast_precision_loss)] // unit counts are far below 2^52
     pub fn score_into(&mut self, record: &mut BlockRecord) {
         self.bench.prepare(&self.trial, &self.sums);
         for estimand in 0..self.study.plan().estimands.len() {
             for method in self.study.methods() {
-                record.estimates.push(estimate(method, &mut self.bench, &self.trial, estimand));
+                record
+                    .estimates
+                    .push(estimate(method, &mut self.bench, &self.trial, estimand));
             }
         }
         let units = self.trial.rows();

@@ -1,0 +1,3 @@
+//! Tables, result folder, figures: they read measures, never trials.
+
+pub mod narrative;

@@ -40,7 +40,8 @@ impl WorkingFit {
     /// Fits by least squares or ridge regression through the Cholesky factor.
     pub fn update(&mut self, past: &Past<'_>, kernels: Kernels) {
         let p = self.positions.len();
-        past.sums().total(&self.positions, &mut self.factor, &mut self.coefficients);
+        past.sums()
+            .total(&self.positions, &mut self.factor, &mut self.coefficients);
         if self.penalty > 0.0 {
             for (index, term) in self.terms.iter().enumerate() {
                 if *term != Term::Intercept {
@@ -55,7 +56,10 @@ impl WorkingFit {
 
     /// Regressors with their fitted coefficients.
     pub fn coefficients(&self) -> impl Iterator<Item = (Term, f64)> + '_ {
-        self.terms.iter().copied().zip(self.coefficients.iter().copied())
+        self.terms
+            .iter()
+            .copied()
+            .zip(self.coefficients.iter().copied())
     }
 
     /// Regressors.

@@ -1,6 +1,6 @@
 //! Counter-based random streams.
 //!
-//! Every random number of a run has an address: seed and phase (the ChaCha key), trial (the
+//! Every random number of a run has an address: seed and phase (the `ChaCha` key), trial (the
 //! stream), purpose (part of the key), batch and column (the position). Methods, truths and sweep
 //! points that ask for the same address get the same number, and nothing depends on the order in
 //! which trials are replayed.
@@ -94,7 +94,6 @@ pub fn fill_standard_normal<R: Rng>(stream: &mut R, out: &mut [f64]) {
 }
 
 /// A uniform number in the open interval (0, 1): an odd multiple of `2^-53`.
-#[allow(clippy::cast_precision_loss)] // the integer has 53 bits
 pub fn open_uniform<R: Rng>(stream: &mut R) -> f64 {
     const SCALE: f64 = 1.0 / (1u64 << 53) as f64;
     ((stream.next_u64() >> 11) | 1) as f64 * SCALE
@@ -129,21 +128,32 @@ mod tests {
     fn addresses_do_not_collide_and_do_not_depend_on_order() {
         let streams = Streams::new(7, Phase::Replay, 3);
         let mut seen = std::collections::HashSet::new();
-        for purpose in
-            [Purpose::Candidates, Purpose::Noise, Purpose::Selection, Purpose::Allocation]
-        {
+        for purpose in [
+            Purpose::Candidates,
+            Purpose::Noise,
+            Purpose::Selection,
+            Purpose::Allocation,
+        ] {
             for batch in 0..5 {
                 for (part, column) in (0..2).flat_map(|part| (0..20).map(move |c| (part, c))) {
                     assert!(seen.insert(streams.open(purpose, batch, part, column).next_u64()));
                 }
             }
         }
-        assert!(seen.insert(
-            Streams::new(7, Phase::Pilot, 3).open(Purpose::Candidates, 0, 0, 0).next_u64()
-        ));
-        assert!(seen.insert(
-            Streams::new(7, Phase::Replay, 4).open(Purpose::Candidates, 0, 0, 0).next_u64()
-        ));
+        assert!(
+            seen.insert(
+                Streams::new(7, Phase::Pilot, 3)
+                    .open(Purpose::Candidates, 0, 0, 0)
+                    .next_u64()
+            )
+        );
+        assert!(
+            seen.insert(
+                Streams::new(7, Phase::Replay, 4)
+                    .open(Purpose::Candidates, 0, 0, 0)
+                    .next_u64()
+            )
+        );
         assert!(!seen.insert(streams.open(Purpose::Noise, 4, 1, 19).next_u64()));
     }
 
@@ -165,8 +175,10 @@ mod tests {
         for _ in 0..6000 {
             counts[uniform_index(&mut stream, 6)] += 1;
         }
-        let statistic: f64 =
-            counts.iter().map(|&count| f64::from(count - 1000).powi(2) / 1000.0).sum();
+        let statistic: f64 = counts
+            .iter()
+            .map(|&count| f64::from(count - 1000).powi(2) / 1000.0)
+            .sum();
         assert!(statistic < 30.0, "{counts:?}");
     }
 }

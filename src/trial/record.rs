@@ -86,7 +86,11 @@ impl Trial {
     /// Rows of the first `batches` batches.
     #[must_use]
     pub fn rows_before(&self, batches: usize) -> usize {
-        if batches == 0 { 0 } else { self.ends[batches - 1] }
+        if batches == 0 {
+            0
+        } else {
+            self.ends[batches - 1]
+        }
     }
 
     /// Stored design columns of some rows.

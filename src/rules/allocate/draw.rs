@@ -27,7 +27,11 @@ pub(super) fn permuted_blocks(stream: &mut Stream, arms: usize, out: &mut [usize
 
 /// Randomised quotas: the arm counts are the expected counts rounded up or down by systematic
 /// sampling of their fractional parts, in random order of the units.
-#[allow(clippy::cast_precision_loss, clippy::cast_possible_truncation, clippy::cast_sign_loss)]
+#[allow(
+    clippy::cast_precision_loss,
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss
+)]
 pub(super) fn quotas(stream: &mut Stream, probabilities: &[f64], out: &mut [usize]) {
     let units = out.len();
     let start = open_uniform(stream);
@@ -98,7 +102,6 @@ mod tests {
     /// Frequencies of each arm for the third unit of seven over 20 000 draws, each within five
     /// standard errors: false alarm below 1e-5 over all cells, and the seed is fixed.
     #[test]
-    #[allow(clippy::cast_precision_loss)]
     fn marginal_probabilities_are_exact() {
         let p = [0.13, 0.5, 0.37];
         let draws = 20_000u64;
@@ -113,8 +116,9 @@ mod tests {
                     2 => permuted_blocks(&mut stream, 3, &mut out),
                     _ => {
                         let mut order = Vec::new();
-                        let pairs: Vec<f64> =
-                            (0..7).flat_map(|i| [1.0 - 0.1 * f64::from(i), 0.1 * f64::from(i)]).collect();
+                        let pairs: Vec<f64> = (0..7)
+                            .flat_map(|i| [1.0 - 0.1 * f64::from(i), 0.1 * f64::from(i)])
+                            .collect();
                         systematic(&mut stream, &pairs, &mut order, &mut out);
                     }
                 }

@@ -4,16 +4,23 @@ use super::ArmSummaries;
 
 /// `ε/K` for every arm, and `1 - ε` shared by the arms with the highest mean so far. An arm
 /// without outcomes counts as the best, so that every arm is tried.
-#[allow(clippy::cast_precision_loss)] // arm counts are small
 pub(super) fn probabilities(summaries: &ArmSummaries, epsilon: f64, out: &mut [f64]) {
     let value = |arm: usize| {
-        if summaries.counts[arm] > 0.0 { summaries.means[arm] } else { f64::INFINITY }
+        if summaries.counts[arm] > 0.0 {
+            summaries.means[arm]
+        } else {
+            f64::INFINITY
+        }
     };
     let arms = out.len();
     let best = (0..arms).map(value).fold(f64::NEG_INFINITY, f64::max);
     let leaders = (0..arms).filter(|&arm| value(arm) >= best).count();
     for (arm, probability) in out.iter_mut().enumerate() {
-        let lead = if value(arm) >= best { (1.0 - epsilon) / leaders as f64 } else { 0.0 };
+        let lead = if value(arm) >= best {
+            (1.0 - epsilon) / leaders as f64
+        } else {
+            0.0
+        };
         *probability = epsilon / arms as f64 + lead;
     }
 }

@@ -19,7 +19,11 @@ pub(super) fn clip(probabilities: &mut [f64], floor: f64) {
                 free += p;
             }
         }
-        let scale = if free > 0.0 { (1.0 - fixed) / free } else { 0.0 };
+        let scale = if free > 0.0 {
+            (1.0 - fixed) / free
+        } else {
+            0.0
+        };
         for p in probabilities.iter_mut() {
             *p = if *p <= floor { floor } else { *p * scale };
         }

@@ -33,9 +33,13 @@ impl Allocator {
     #[must_use]
     pub fn new(allocation: &Allocation, arm_count: usize, design: &Design) -> Self {
         let regressions = match &allocation.rule {
-            AllocationRule::ThompsonLinear { variance, prior_sd, columns } => {
-                Some(ArmRegressions::new(*variance, *prior_sd, columns, arm_count, design))
-            }
+            AllocationRule::ThompsonLinear {
+                variance,
+                prior_sd,
+                columns,
+            } => Some(ArmRegressions::new(
+                *variance, *prior_sd, columns, arm_count, design,
+            )),
             _ => None,
         };
         Self {
@@ -81,13 +85,16 @@ impl Allocator {
                     self.summaries.update(past);
                     epsilon_greedy::probabilities(&self.summaries, *epsilon, first);
                 }
-                AllocationRule::Thompson { variance, prior_mean, prior_sd } => {
+                AllocationRule::Thompson {
+                    variance,
+                    prior_mean,
+                    prior_sd,
+                } => {
                     self.summaries.update(past);
                     let summaries = &mut self.summaries;
                     thompson::probabilities(summaries, *variance, *prior_mean, *prior_sd, first);
                 }
                 AllocationRule::Equal | AllocationRule::ThompsonLinear { .. } => {
-                    #[allow(clippy::cast_precision_loss)] // arm counts are small
                     first.fill(1.0 / arms as f64);
                 }
             }
@@ -161,6 +168,10 @@ impl ArmSummaries {
         let total: f64 = self.counts.iter().sum();
         let seen: f64 = self.counts.iter().map(|count| count.min(1.0)).sum();
         let squares: f64 = self.squares.iter().sum();
-        if total > seen { squares / (total - seen) } else { f64::NAN }
+        if total > seen {
+            squares / (total - seen)
+        } else {
+            f64::NAN
+        }
     }
 }

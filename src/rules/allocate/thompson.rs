@@ -8,7 +8,6 @@ use crate::plan::OutcomeVariance;
 /// `n/σ² + 1/τ²`, posterior mean the precision-weighted mean of prior and data. With the variance
 /// estimated, the pooled within-arm variance takes the place of `σ²`. Arms without outcomes under
 /// a flat prior make all arms equally probable.
-#[allow(clippy::cast_precision_loss)] // arm counts are small
 pub(super) fn probabilities(
     summaries: &mut ArmSummaries,
     variance: OutcomeVariance,
@@ -21,8 +20,8 @@ pub(super) fn probabilities(
         OutcomeVariance::Estimated => summaries.pooled_variance(),
     };
     let prior_precision = 1.0 / (prior_sd * prior_sd);
-    let undecided = variance.is_nan()
-        || (prior_precision == 0.0 && summaries.counts.iter().any(|&count| count == 0.0));
+    let undecided =
+        variance.is_nan() || (prior_precision == 0.0 && summaries.counts.contains(&0.0));
     if undecided {
         out.fill(1.0 / out.len() as f64);
         return;

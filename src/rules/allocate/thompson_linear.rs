@@ -43,7 +43,11 @@ impl ArmRegressions {
         design: &Design,
     ) -> Self {
         let mut stored = vec![0];
-        stored.extend(columns.iter().map(|column| design.first_covariate() + column));
+        stored.extend(
+            columns
+                .iter()
+                .map(|column| design.first_covariate() + column),
+        );
         let d = stored.len();
         Self {
             variance,
@@ -106,7 +110,6 @@ impl ArmRegressions {
 
     /// Residual variance of the least-squares fits, pooled over arms; the mean square of the
     /// outcomes when no residual degree of freedom is left.
-    #[allow(clippy::cast_precision_loss)] // ranks are small
     fn residual_variance(&mut self, kernels: Kernels) -> f64 {
         let d = self.stored.len();
         let mut residual = 0.0;
@@ -126,7 +129,11 @@ impl ArmRegressions {
         let total: f64 = self.squares.iter().sum();
         // Far below the mean square, the difference above is rounding error.
         let smallest = (total / units.max(1.0) * 1e-12).max(f64::MIN_POSITIVE);
-        if degrees > 0.0 { (residual / degrees).max(smallest) } else { (total / units.max(1.0)).max(smallest) }
+        if degrees > 0.0 {
+            (residual / degrees).max(smallest)
+        } else {
+            (total / units.max(1.0)).max(smallest)
+        }
     }
 
     /// Probability that each arm has the largest predicted outcome for one unit of the batch.
@@ -143,7 +150,11 @@ impl ArmRegressions {
                 *value = batch.column(column)[unit];
             }
             self.means[arm] = kernels.dot(&self.row, &self.mean[arm * d..(arm + 1) * d]);
-            kernels.solve_lower(&self.factor[arm * d * d..(arm + 1) * d * d], d, &mut self.row);
+            kernels.solve_lower(
+                &self.factor[arm * d * d..(arm + 1) * d * d],
+                d,
+                &mut self.row,
+            );
             self.sds[arm] = kernels.dot(&self.row, &self.row).sqrt();
         }
         probability_of_being_largest(&self.means, &self.sds, out);

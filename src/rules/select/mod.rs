@@ -43,7 +43,10 @@ impl Selector {
             _ => None,
         };
         Self {
-            scorer: part.rule.score().map(|score| Scorer::new(score, design, used)),
+            scorer: part
+                .rule
+                .score()
+                .map(|score| Scorer::new(score, design, used)),
             information,
             scores: Vec::new(),
             order: Vec::new(),
@@ -61,14 +64,21 @@ impl Selector {
     /// For a rule that takes the extreme candidates of a linear score: which end, and the slopes
     /// of the score on the covariate columns. `past` holds the batches that are due.
     pub fn extreme(&mut self, past: &Past<'_>, kernels: Kernels) -> Option<Extreme<'_>> {
-        let SelectRule::Quantile { tail, .. } = self.part.rule else { return None };
+        let SelectRule::Quantile { tail, .. } = self.part.rule else {
+            return None;
+        };
         let (size, candidates) = (self.part.size, self.part.candidates);
         if size >= candidates {
             return None;
         }
         let scorer = self.scorer.as_mut()?;
         scorer.update(past, kernels);
-        Some(Extreme { slopes: scorer.slopes(), tail, candidates, size })
+        Some(Extreme {
+            slopes: scorer.slopes(),
+            tail,
+            candidates,
+            size,
+        })
     }
 
     /// Chooses among the pool, in order of arrival. `past` holds the batches that are due.
@@ -87,7 +97,10 @@ impl Selector {
         }
         match &self.part.rule {
             SelectRule::Random => {
-                chosen.extend((0..size).map(|candidate| Choice { candidate, probability: 1.0 }));
+                chosen.extend((0..size).map(|candidate| Choice {
+                    candidate,
+                    probability: 1.0,
+                }));
             }
             SelectRule::Quantile { tail, .. } => {
                 quantile::choose(&self.scores, *tail, size, &mut self.order, chosen);
@@ -96,7 +109,14 @@ impl Selector {
                 threshold::choose(&self.scores, *threshold, size, chosen);
             }
             SelectRule::Tilted { strength, .. } => {
-                tilted::choose(&self.scores, *strength, size, stream, &mut self.scratch, chosen);
+                tilted::choose(
+                    &self.scores,
+                    *strength,
+                    size,
+                    stream,
+                    &mut self.scratch,
+                    chosen,
+                );
             }
             SelectRule::Uncertain { .. } => {
                 if let Some(fit) = &mut self.information {

@@ -26,7 +26,10 @@ pub(super) fn choose(
     }
     order.sort_unstable();
     let probability = if size == scores.len() { 1.0 } else { f64::NAN };
-    chosen.extend(order.iter().map(|&candidate| Choice { candidate, probability }));
+    chosen.extend(order.iter().map(|&candidate| Choice {
+        candidate,
+        probability,
+    }));
 }
 
 #[cfg(test)]

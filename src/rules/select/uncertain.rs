@@ -34,7 +34,12 @@ pub(super) fn score(
         return;
     }
     let used: Vec<usize> = (0..p).collect();
-    kernels.whiten(Columns::new(rows, count, 0, count), &used, fit.factor(), whitened);
+    kernels.whiten(
+        Columns::new(rows, count, 0, count),
+        &used,
+        fit.factor(),
+        whitened,
+    );
     for column in whitened.chunks_exact(count) {
         for (score, value) in scores.iter_mut().zip(column) {
             *score += value * value;
