@@ -245,6 +245,11 @@ impl<'a> Worker<'a> {
         &mut self.bench
     }
 
+    /// The workbench as prepared last, with the trial simulated last.
+    pub fn workbench(&mut self) -> (&mut Workbench, &Trial) {
+        (&mut self.bench, &self.trial)
+    }
+
     /// Applies every method to the trial simulated last and appends the results to `record`.
     pub fn score_into(&mut self, record: &mut BlockRecord) {
         self.bench.prepare(&self.trial, &self.sums);

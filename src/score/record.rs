@@ -43,3 +43,14 @@ pub struct BlockRecord {
     /// Mean over the enrolled of the true expected outcome, one per trial.
     pub mean_outcomes: Vec<f64>,
 }
+
+impl BlockRecord {
+    /// Forgets all trials but keeps the room.
+    pub fn clear(&mut self) {
+        self.trials = 0;
+        self.estimates.clear();
+        self.units.clear();
+        self.arm_units.clear();
+        self.mean_outcomes.clear();
+    }
+}
