@@ -2,8 +2,6 @@
 
 mod measure;
 mod record;
-mod tally;
 
 pub use measure::{CellMeasures, Measure, MeasureValue, OperatingValue, TruthMeasures};
 pub use record::{BlockRecord, Layout};
-pub use tally::{CellDistribution, Tally};
