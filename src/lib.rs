@@ -22,5 +22,6 @@
 #![forbid(unsafe_code)]
 
 pub mod methods;
+pub mod numerics;
 pub mod plan;
 pub mod score;

@@ -20,7 +20,12 @@ impl Answer {
     #[must_use]
     pub fn symmetric(point: f64, standard_error: f64, critical: f64) -> Self {
         let half_width = critical * standard_error;
-        Self { point, standard_error, lower: point - half_width, upper: point + half_width }
+        Self {
+            point,
+            standard_error,
+            lower: point - half_width,
+            upper: point + half_width,
+        }
     }
 
     /// Width of the interval.

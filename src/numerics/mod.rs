@@ -1,0 +1,3 @@
+//! Linear algebra kernels and distributions.
+
+pub mod distribution;
