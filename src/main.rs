@@ -1,1 +1,7 @@
-fn main() {}
+//! The `windage` program: parse, run, exit code.
+
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    windage::cli::main()
+}
