@@ -10,6 +10,7 @@ mod path;
 mod schema;
 mod sink;
 mod source;
+mod statements;
 mod structure;
 mod sweep;
 mod syntax;
@@ -128,7 +129,12 @@ impl Scenario {
                 .and_then(|entry| Fields::of(&entry.node, "[sweep]", &sink))
                 .and_then(|fields| sweep::read(&document.root, &fields));
         }
-        let mistakes = sink.into_list();
+        let mut mistakes = sink.into_list();
+        if !document.complete {
+            let message = "the rest of the file could not be read and was not checked".to_owned();
+            let help = "correct what is shown below, then read the file again".to_owned();
+            mistakes.push(Diagnostic::of_file(origin, message, Some(help)));
+        }
         Draft {
             scenario: Self {
                 source,

@@ -85,26 +85,28 @@ pub(crate) fn check(node: &mut Node, shape: &'static Shape, label: &str, sink: &
 }
 
 fn check_keys(entries: &mut Vec<Entry>, keys: &'static [Key], label: &str, sink: &Sink<'_>) {
-    for index in 0..entries.len() {
-        let word = entries[index].key.clone();
+    let mut absent: Vec<&str> = keys.iter().map(|key| key.name).collect();
+    absent.retain(|name| entries.iter().all(|entry| entry.key != *name));
+    for entry in entries.iter_mut() {
+        let word = entry.key.clone();
         if find(keys, &word).is_some() {
             continue;
         }
-        let absent = |name: &str| entries.iter().all(|entry| entry.key != name);
         let names = || keys.iter().map(|key| key.name);
-        let replacement = sink.nearest(&word, names().filter(|name| absent(name)));
+        let replacement = sink.nearest(&word, absent.iter().copied());
         let help = match replacement.or_else(|| sink.nearest(&word, names())) {
             Some(name) => format!("did you mean `{name}`?"),
             None => format!("known here: {}", names().collect::<Vec<_>>().join(", ")),
         };
-        let place = &entries[index].key_place;
+        let place = &entry.key_place;
         sink.report(
             place,
             format!("unknown key `{word}` in {label}"),
             Some(help),
         );
         if let Some(name) = replacement {
-            name.clone_into(&mut entries[index].key);
+            name.clone_into(&mut entry.key);
+            absent.retain(|other| *other != name);
         }
     }
     // What could not be repaired is reported and out of the way.
@@ -140,7 +142,7 @@ fn wanted(shape: &Shape) -> String {
         },
         Shape::Map(_) => "a table of names and values".to_owned(),
         Shape::Table(keys) => {
-            let names: Vec<&str> = keys.iter().map(|key| key.name).collect();
+            let names: Vec<&str> = keys.iter().map(|key| key.name).take(4).collect();
             format!("a table with keys such as {}", names.join(", "))
         }
         Shape::Either(shapes) => shapes.iter().map(wanted).collect::<Vec<_>>().join(", or "),

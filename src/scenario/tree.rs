@@ -152,10 +152,16 @@ fn node(value: &toml::Spanned<DeValue<'_>>, sink: &Sink<'_>) -> Node {
             if let Ok(value) = i64::from_str_radix(integer.as_str(), integer.radix()) {
                 Content::Integer(value)
             } else {
+                let digits = integer.as_str();
+                let message = if digits.bytes().any(|digit| digit.is_ascii_alphanumeric()) {
+                    format!("the integer {digits} does not fit in 64 bits")
+                } else {
+                    "this is not a number".to_owned()
+                };
                 sink.report(
                     &place,
-                    format!("the integer {} does not fit in 64 bits", integer.as_str()),
-                    Some("write a smaller number".to_owned()),
+                    message,
+                    Some("write a smaller whole number".to_owned()),
                 );
                 Content::Unusable
             }

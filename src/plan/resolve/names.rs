@@ -182,10 +182,14 @@ impl Names {
             sink.taint();
             return;
         }
+        let missing = match name.split_once(':') {
+            Some((arm, _)) if !self.meanings.contains_key(arm) => arm,
+            _ => column,
+        };
         let help = self.offer(name, sink);
         sink.report_missing(
             place,
-            column,
+            missing,
             format!("unknown {what} \"{name}\""),
             Some(help),
         );

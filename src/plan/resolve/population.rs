@@ -105,18 +105,12 @@ pub(super) fn read(root: &Fields<'_>, base_folder: &Path, names: &mut Names) -> 
         return units;
     }
     let before = fields.sink().trouble();
-    let node = fields.required("covariates", "list the covariates, or name a roster");
-    let marginals = match fields.list("covariates") {
-        Some(nodes) => covariates(nodes, &fields, names),
-        None => {
-            if node.is_none() {
-                // Without covariates the model is the intercept and the arms.
-                Vec::new()
-            } else {
-                names.leave_open("");
-                Vec::new()
-            }
-        }
+    fields.required("covariates", "list the covariates, or name a roster");
+    let marginals = if let Some(nodes) = fields.list("covariates") {
+        covariates(nodes, &fields, names)
+    } else {
+        names.leave_open("");
+        Vec::new()
     };
     let sound = fields.sink().trouble() == before;
     let correlation = correlation::read(&fields, sound.then_some(marginals.len()));

@@ -51,8 +51,9 @@ pub(super) fn read(fields: &Fields<'_>, names: &Names) -> Model {
             continue;
         };
         if word.split(':').next() == Some("arms") && !names.has_arms() {
-            sink.report(
+            sink.report_missing(
                 &node.place,
+                "arms",
                 format!("\"{word}\" in a study without arms"),
                 Some("take it out, or add [arms]".to_owned()),
             );

@@ -198,8 +198,57 @@ fn an_unclosed_bracket_is_one_mistake() {
 
 #[test]
 fn a_broken_header_is_one_mistake() {
-    let text = STUDY.replace("[arms]", "[arms");
+    let text = STUDY
+        .replace("[arms]", "[arms")
+        .replace("level = 0.9", "level = 9");
     let diagnostics = read(&text).unwrap_err();
-    let shown = diagnostics.to_string();
-    assert!(shown.contains("[arms\n"), "{shown}");
+    let lines: Vec<&str> = diagnostics
+        .iter()
+        .map(|diagnostic| diagnostic.source_line.as_str())
+        .collect();
+    // What names an arm is not wrong: the arms could not be read.
+    assert!(
+        lines.contains(&"[arms") && lines.contains(&"level = 9"),
+        "{diagnostics}"
+    );
+    assert!(diagnostics.len() <= 3, "{diagnostics}");
+}
+
+#[test]
+fn forty_mistakes_of_syntax_are_all_reported() {
+    let mut text = STUDY.to_owned();
+    let mut lines = Vec::new();
+    for index in 0..1000 {
+        let _ = writeln!(
+            text,
+            "[[truth]]\nname = \"truth {index}\" # as in the survey of the year"
+        );
+        if index % 25 == 0 {
+            let wrong = [
+                "coefficients = { treated = 0.1",
+                "coefficients = { treated 0.1 }",
+                "coefficients",
+                "coefficients = { treated = \"0.1 }",
+            ][index / 25 % 4];
+            text += wrong;
+            text.push('\n');
+            lines.push(text.lines().count());
+        }
+    }
+    let diagnostics = read(&text).unwrap_err();
+    let found: Vec<usize> = diagnostics.iter().map(|found| found.line).collect();
+    assert_eq!(found, lines, "{diagnostics}");
+}
+
+#[test]
+fn a_mistake_in_a_member_leaves_the_other_members_readable() {
+    let text = STUDY
+        .replace(
+            "{ name = \"age\", law = \"normal\" }",
+            "{ name = \"age\", law = }",
+        )
+        .replace("count = 3 }", "count = -3 }");
+    let diagnostics = read(&text).unwrap_err();
+    let lines: Vec<usize> = diagnostics.iter().map(|found| found.line).collect();
+    assert_eq!(lines, [6, 7], "{diagnostics}");
 }
