@@ -29,6 +29,7 @@ pub mod population;
 pub mod replay;
 pub mod report;
 pub mod rules;
+pub mod scenario;
 pub mod score;
 pub mod streams;
 pub mod trial;

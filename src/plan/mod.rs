@@ -10,6 +10,7 @@ mod method;
 mod model;
 mod population;
 mod precision;
+mod resolve;
 mod truth;
 
 pub use batch::{
@@ -21,6 +22,7 @@ pub use method::{BatchWeights, DebiasingPenalty, Method, MethodKind, VarianceFor
 pub use model::{Design, Model, Term};
 pub use population::{CorrelationFactor, LawPopulation, Marginal, Population, Roster, Source};
 pub use precision::{Bound, Precision, Requirement, Verdicts};
+pub use resolve::{count_for_share, parse, read, resolve};
 pub use truth::{Drift, Noise, NoiseLaw, Truth};
 
 /// A planned study, the truths to try it under, and the methods to score.
