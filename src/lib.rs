@@ -23,4 +23,5 @@
 
 pub mod methods;
 pub mod plan;
+pub mod report;
 pub mod score;
