@@ -92,9 +92,10 @@ fn trials(criterion: &mut Criterion) {
     for (units, covariates) in SIZES {
         let size = format!("n={units} p={covariates}");
         let plain = study(units, covariates).with_every_candidate_drawn();
-        for (name, study) in
-            [("trial", study(units, covariates)), ("every candidate drawn", plain)]
-        {
+        for (name, study) in [
+            ("trial", study(units, covariates)),
+            ("every candidate drawn", plain),
+        ] {
             let mut worker = Worker::new(&study);
             let mut first = 0;
             group.bench_function(BenchmarkId::new(name, &size), |bencher| {
@@ -131,26 +132,41 @@ fn stages(criterion: &mut Criterion) {
         group.bench_function("Gram matrix of all units", |bencher| {
             let trial = worker.trial();
             let rows = 0..trial.rows();
-            bencher.iter(|| study.kernels().gram(trial.design(rows.clone()), &all, &mut gram));
-        });
-        let mut factor = gram.clone();
-        group.bench_function("solve: Cholesky factor and two triangular solves", |bencher| {
-            let mut solution = vec![1.0; covariates];
             bencher.iter(|| {
-                factor.copy_from_slice(&gram);
-                study.kernels().cholesky(&mut factor, covariates, 0.0);
-                study.kernels().solve_lower(&factor, covariates, &mut solution);
-                study.kernels().solve_lower_transposed(&factor, covariates, &mut solution);
-                solution.fill(1.0);
+                study
+                    .kernels()
+                    .gram(trial.design(rows.clone()), &all, &mut gram)
             });
         });
+        let mut factor = gram.clone();
+        group.bench_function(
+            "solve: Cholesky factor and two triangular solves",
+            |bencher| {
+                let mut solution = vec![1.0; covariates];
+                bencher.iter(|| {
+                    factor.copy_from_slice(&gram);
+                    study.kernels().cholesky(&mut factor, covariates, 0.0);
+                    study
+                        .kernels()
+                        .solve_lower(&factor, covariates, &mut solution);
+                    study
+                        .kernels()
+                        .solve_lower_transposed(&factor, covariates, &mut solution);
+                    solution.fill(1.0);
+                });
+            },
+        );
         group.bench_function("prepare: all fits, residuals, leverages", |bencher| {
             bencher.iter(|| {
                 black_box(worker.prepare());
             });
         });
-        for (label, method) in
-            study.plan().methods.iter().map(|method| &method.label).zip(study.methods())
+        for (label, method) in study
+            .plan()
+            .methods
+            .iter()
+            .map(|method| &method.label)
+            .zip(study.methods())
         {
             let mut own = Worker::with_needs(&study, Needs::union(method.needs(), study.needs()));
             own.simulate(0, Phase::Replay, 1);

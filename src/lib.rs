@@ -21,10 +21,12 @@
 //! | [`numerics`] | linear algebra kernels and distributions |
 #![forbid(unsafe_code)]
 
+pub mod cli;
 pub mod methods;
 pub mod numerics;
 pub mod outcome;
 pub mod plan;
+pub mod planning;
 pub mod population;
 pub mod replay;
 pub mod report;

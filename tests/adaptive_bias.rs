@@ -65,7 +65,13 @@ fn epsilon_greedy_arm_means_have_the_closed_form_bias() {
         let result = &results(&two_arms(&batches, effect, 40_000))[0];
         for cell in 0..2 {
             let (bias, mcse) = value(result, cell, Measure::Bias);
-            assert_within_mc(&format!("arm {cell}, {effect}, {epsilon}"), bias, expected, mcse, Z);
+            assert_within_mc(
+                &format!("arm {cell}, {effect}, {epsilon}"),
+                bias,
+                expected,
+                mcse,
+                Z,
+            );
         }
     }
 }
@@ -77,14 +83,24 @@ fn epsilon_greedy_arm_means_have_the_closed_form_bias() {
 #[test]
 fn thompson_arm_means_have_the_integrated_bias() {
     for (effect, floor, expected, coverage) in [
-        (0.0, 0.0, [-0.016_991_691_689_064_066, -0.016_991_691_689_064_07], Some(0.944_508)),
+        (
+            0.0,
+            0.0,
+            [-0.016_991_691_689_064_066, -0.016_991_691_689_064_07],
+            Some(0.944_508),
+        ),
         (
             0.5,
             0.0,
             [-0.001_727_983_560_225_026_7, -0.007_712_885_825_810_561_5],
             Some(0.952_538),
         ),
-        (0.0, 0.1, [-0.015_209_210_904_819_777, -0.015_209_210_904_819_784], None),
+        (
+            0.0,
+            0.1,
+            [-0.015_209_210_904_819_777, -0.015_209_210_904_819_784],
+            None,
+        ),
     ] {
         let batches = format!(
             "[[batch]]\nsize = 100\n[[batch]]\nsize = 100\nallocate = {{ rule = \"thompson\", \
@@ -93,7 +109,13 @@ fn thompson_arm_means_have_the_integrated_bias() {
         let result = &results(&two_arms(&batches, effect, 40_000))[0];
         for (cell, expected) in expected.into_iter().enumerate() {
             let (bias, mcse) = value(result, cell, Measure::Bias);
-            assert_within_mc(&format!("arm {cell}, {effect}, {floor}"), bias, expected, mcse, Z);
+            assert_within_mc(
+                &format!("arm {cell}, {effect}, {floor}"),
+                bias,
+                expected,
+                mcse,
+                Z,
+            );
         }
         if let Some(expected) = coverage {
             let (covered, mcse) = value(result, 2, Measure::Coverage);
@@ -102,7 +124,14 @@ fn thompson_arm_means_have_the_integrated_bias() {
     }
 }
 
-fn enrichment(p: usize, first: usize, norm: f64, fraction: f64, trials: u64, methods: &str) -> String {
+fn enrichment(
+    p: usize,
+    first: usize,
+    norm: f64,
+    fraction: f64,
+    trials: u64,
+    methods: &str,
+) -> String {
     format!(
         r#"
 format = 1

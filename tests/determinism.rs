@@ -71,7 +71,11 @@ fn bits(results: &[TruthResult]) -> Vec<u64> {
     for result in results {
         for cell in &result.measures.cells {
             for value in &cell.values {
-                out.extend([value.value.to_bits(), value.mcse.to_bits(), value.trials_used]);
+                out.extend([
+                    value.value.to_bits(),
+                    value.mcse.to_bits(),
+                    value.trials_used,
+                ]);
             }
         }
         for value in &result.measures.operating {
@@ -111,7 +115,10 @@ fn block_order_does_not_change_a_bit() {
         let mut tally = Tally::new(layout(&study, truth));
         records.iter().for_each(|record| tally.absorb(record));
         let measures = tally.measures(truth, &study.plan().arms);
-        backward.push(TruthResult { measures, distributions: tally.distributions() });
+        backward.push(TruthResult {
+            measures,
+            distributions: tally.distributions(),
+        });
     }
     assert_eq!(bits(&forward), bits(&backward));
 }
@@ -137,7 +144,10 @@ fn truths_share_covariates_and_noise() {
         assert_eq!(null.value(row, 2).to_bits(), effect.value(row, 2).to_bits());
         let noise = null.outcomes()[row] - null.expected()[row];
         let other = effect.outcomes()[row] - effect.expected()[row];
-        assert!((noise - other).abs() < 1e-12, "the noise of a unit is the same in every truth");
+        assert!(
+            (noise - other).abs() < 1e-12,
+            "the noise of a unit is the same in every truth"
+        );
     }
 }
 

@@ -11,7 +11,8 @@ use windage::score::Measure;
 /// their difference: below 3e-4 false alarm over the 42 comparisons, and the seeds are fixed.
 #[test]
 fn short_cut_and_plain_path_agree_in_law() {
-    let matrix = "{ kind = \"matrix\", values = [[1.0, 0.3, 0.1], [0.3, 1.0, -0.4], [0.1, -0.4, 1.0]] }";
+    let matrix =
+        "{ kind = \"matrix\", values = [[1.0, 0.3, 0.1], [0.3, 1.0, -0.4], [0.1, -0.4, 1.0]] }";
     for (rule, correlation) in [
         ("top-quantile", "{ kind = \"autoregressive\", rho = -0.5 }"),
         ("bottom-quantile", "{ kind = \"exchangeable\", rho = 0.4 }"),
@@ -75,8 +76,12 @@ seed = {seed}
         }
         let mean = |result: &windage::replay::TruthResult| {
             let found = result.measures.operating.iter();
-            let found = found.clone().find(|value| value.characteristic == "mean-outcome");
-            found.map(|value| (value.value, value.mcse)).expect("scored")
+            let found = found
+                .clone()
+                .find(|value| value.characteristic == "mean-outcome");
+            found
+                .map(|value| (value.value, value.mcse))
+                .expect("scored")
         };
         let ((a, a_error), (b, b_error)) = (mean(short), mean(plain));
         assert_within_mc("mean outcome", a, b, a_error.hypot(b_error), 4.5);

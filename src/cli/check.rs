@@ -2,10 +2,8 @@
 
 use super::output::Output;
 use super::{Ending, Failure, read_scenario};
-use crate::plan;
 use crate::replay::{Study, Worker};
-use crate::report::narrative::narrative;
-use crate::report::trial_listing::trial_listing;
+use crate::report::{narrative, trial_listing};
 use crate::streams::Phase;
 use std::path::PathBuf;
 
@@ -24,24 +22,28 @@ pub(super) struct Check {
 
 impl Check {
     pub(super) fn run(self, output: &Output) -> Result<Ending, Failure> {
-        let scenario = read_scenario(&self.scenario, None, None)?;
-        let plan = plan::resolve(&scenario)?;
+        let (_, plan) = read_scenario(&self.scenario, None, None)?;
         let Some(index) = self.trial else {
             output.print(&narrative(&plan, output.width))?;
             return Ok(Ending::Done);
         };
         let truth = match &self.truth {
             None => 0,
-            Some(name) => plan.truths.iter().position(|truth| &truth.name == name).ok_or_else(
-                || {
-                    let known: Vec<&str> =
-                        plan.truths.iter().map(|truth| truth.name.as_str()).collect();
+            Some(name) => plan
+                .truths
+                .iter()
+                .position(|truth| &truth.name == name)
+                .ok_or_else(|| {
+                    let known: Vec<&str> = plan
+                        .truths
+                        .iter()
+                        .map(|truth| truth.name.as_str())
+                        .collect();
                     Failure::Usage(format!(
                         "error: the scenario has no truth {name:?}; it has {}",
                         known.join(", ")
                     ))
-                },
-            )?,
+                })?,
         };
         let study = Study::without_methods(&plan);
         let mut worker = Worker::new(&study);

@@ -5,13 +5,15 @@ mod output;
 mod replay;
 mod sweep;
 
+use crate::plan::{self, Plan};
 use crate::scenario::{Diagnostics, Scenario};
 use clap::{Parser, Subcommand};
 use output::Output;
-use std::path::Path;
+use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
+use std::time::{SystemTime, UNIX_EPOCH};
 
 /// Simulates a planned adaptive study and scores every method of inference on it.
 #[derive(Debug, Parser)]
@@ -106,15 +108,48 @@ fn read_scenario(
     path: &Path,
     trials: Option<u64>,
     seed: Option<u64>,
-) -> Result<Scenario, Failure> {
-    let mut scenario = Scenario::read(path)?;
+) -> Result<(Scenario, Plan), Failure> {
+    let (mut scenario, mut plan) = plan::read(path)?;
     for (key, value) in [("precision.trials", trials), ("precision.seed", seed)] {
         let Some(value) = value else { continue };
         let value = i64::try_from(value)
             .map_err(|_| Failure::Usage(format!("error: {value} is too large for {key}")))?;
         scenario = scenario.with_value(key, toml::Value::Integer(value))?;
+        plan = plan::resolve(&scenario)?;
     }
-    Ok(scenario)
+    Ok((scenario, plan))
+}
+
+/// A failure of the run in the words of its error.
+fn run_failure(error: impl std::fmt::Display) -> Failure {
+    Failure::Run(format!("error: {error}"))
+}
+
+/// The result folder asked for, or one named after the scenario.
+fn result_folder(asked: Option<&Path>, scenario: &Path) -> PathBuf {
+    asked.map_or_else(
+        || {
+            let name = scenario
+                .file_stem()
+                .map_or("scenario".into(), |stem| stem.to_string_lossy());
+            PathBuf::from(format!("{name}-result"))
+        },
+        Path::to_path_buf,
+    )
+}
+
+/// Threads that a number of worker threads stands for.
+fn thread_count(asked: usize) -> usize {
+    if asked > 0 {
+        return asked;
+    }
+    std::thread::available_parallelism().map_or(1, usize::from)
+}
+
+/// The time, UTC.
+fn started_now() -> String {
+    let since = SystemTime::now().duration_since(UNIX_EPOCH);
+    crate::report::utc_text(since.map_or(0, |duration| duration.as_secs()))
 }
 
 /// A flag that the interrupt signal sets; a second signal ends the program at once.

@@ -24,7 +24,11 @@ impl Output {
             .filter(|_| terminal)
             .map_or(WIDTH, |(width, _)| usize::from(width.0).clamp(60, WIDTH));
         let colourless = std::env::var_os("NO_COLOR").is_some_and(|value| !value.is_empty());
-        Self { width, styled: terminal && !colourless, progress: stderr().is_terminal() }
+        Self {
+            width,
+            styled: terminal && !colourless,
+            progress: stderr().is_terminal(),
+        }
     }
 
     /// Writes a result to standard output.
@@ -54,6 +58,14 @@ pub(super) struct ProgressLine {
 }
 
 impl ProgressLine {
+    /// Shows a word while there are no trials to count yet.
+    pub(super) fn note(&mut self, words: &str) {
+        if self.shown {
+            self.drawn = true;
+            eprint!("\r\x1b[K{words} ...");
+        }
+    }
+
     /// Redraws the line, a few times a second at most.
     pub(super) fn show(&mut self, label: &str, progress: Progress) {
         const INTERVAL: Duration = Duration::from_millis(200);

@@ -1,0 +1,179 @@
+//! `windage replay`: simulate, score, print the tables, write the result folder.
+
+use super::output::Output;
+use super::{Ending, Failure, interrupt_flag, read_scenario, run_failure, started_now};
+use crate::replay::{ReplayOptions, Study, TrialSink, replay};
+use crate::report::{
+    Clock, Look, Machine, ResultFolder, RunRecord, Scored, TrialsFile, replay_figures,
+    replay_tables, summary_json, write_result,
+};
+use crate::score::{BlockRecord, Labels, evaluate};
+use std::fmt::Write as _;
+use std::fs::File;
+use std::path::PathBuf;
+use std::time::Instant;
+
+/// Arguments of `replay`.
+#[derive(Debug, clap::Args)]
+pub(super) struct Replay {
+    /// Scenario file.
+    scenario: PathBuf,
+    /// Result folder; by default `NAME-result` beside where the program runs.
+    #[arg(short, long, value_name = "FOLDER")]
+    output: Option<PathBuf>,
+    /// Replace a result folder that exists.
+    #[arg(short, long)]
+    force: bool,
+    /// Trials per truth, instead of the scenario's number.
+    #[arg(short, long, value_name = "NUMBER")]
+    trials: Option<u64>,
+    /// Seed, instead of the scenario's.
+    #[arg(long, value_name = "NUMBER")]
+    seed: Option<u64>,
+    /// Worker threads; one per core by default. The result does not depend on it.
+    #[arg(
+        long,
+        value_name = "NUMBER",
+        default_value_t = 0,
+        hide_default_value = true
+    )]
+    threads: usize,
+    /// Write every trial's estimates to `trials.parquet`.
+    #[arg(long)]
+    keep_trials: bool,
+    /// Print the results as JSON instead of tables.
+    #[arg(long)]
+    json: bool,
+    /// Show no progress.
+    #[arg(short, long)]
+    quiet: bool,
+}
+
+/// Keeps every trial in a Parquet file.
+struct KeepTrials {
+    file: TrialsFile<File>,
+    methods: usize,
+}
+
+impl TrialSink for KeepTrials {
+    fn take(&mut self, truth: usize, first: u64, block: &BlockRecord) -> std::io::Result<()> {
+        self.file
+            .push_block(truth, first, self.methods, block)
+            .map_err(|error| std::io::Error::other(error.to_string()))
+    }
+}
+
+impl Replay {
+    pub(super) fn run(self, output: &Output) -> Result<Ending, Failure> {
+        let (scenario, plan) = read_scenario(&self.scenario, self.trials, self.seed)?;
+        let target = super::result_folder(self.output.as_deref(), &self.scenario);
+        let folder = ResultFolder::begin(&target, self.force).map_err(run_failure)?;
+        let interrupt = interrupt_flag()?;
+        let (started, begun) = (started_now(), Instant::now());
+        let mut progress = output.progress(self.quiet);
+        progress.note("preparing");
+        let study = Study::prepare(&plan);
+        let true_values: Vec<Vec<f64>> = (0..plan.truths.len())
+            .map(|truth| {
+                study
+                    .true_values(truth)
+                    .iter()
+                    .map(|value| value.value)
+                    .collect()
+            })
+            .collect();
+        let mut keep = if self.keep_trials {
+            let named = Scored::new(&plan, true_values.clone(), Vec::new(), Vec::new());
+            let file = folder.create("trials.parquet").map_err(run_failure)?;
+            let file = TrialsFile::begin(file, &named).map_err(run_failure)?;
+            Some(KeepTrials {
+                file,
+                methods: plan.methods.len(),
+            })
+        } else {
+            None
+        };
+        let results = replay(
+            &study,
+            &mut ReplayOptions {
+                threads: self.threads,
+                interrupt: &interrupt,
+                progress: &mut |state| progress.show("", state),
+                sink: keep.as_mut().map(|keep| keep as &mut dyn TrialSink),
+                diagnostics: true,
+            },
+        );
+        progress.finish();
+        let results = results.map_err(run_failure)?;
+        if let Some(keep) = keep {
+            keep.file.finish().map_err(run_failure)?;
+        }
+        let (measures, distributions): (Vec<_>, Vec<_>) = results
+            .into_iter()
+            .map(|result| (result.measures, result.distributions))
+            .unzip();
+        let (scored, judged) = Scored::judge(&plan, true_values, measures);
+        let clock = Clock {
+            started,
+            seconds: begun.elapsed().as_secs_f64(),
+        };
+        let precision = plan.precision;
+        let record = RunRecord::new(
+            &scored,
+            scenario.text(),
+            precision.seed,
+            precision.trials,
+            None,
+            clock,
+            Machine::current(super::thread_count(self.threads)),
+        );
+        let figures = replay_figures(&scored, &distributions);
+        write_result(&folder, scenario.text(), &record, &scored, &figures).map_err(run_failure)?;
+        let written = folder.commit().map_err(run_failure)?;
+        let labels = Labels::of(&plan);
+        let outcomes = evaluate(&plan.requirements, &labels, &scored.measures, &judged);
+        let met = outcomes.iter().all(|outcome| outcome.met);
+        if self.json {
+            let text = summary_json(&scored).map_err(run_failure)?;
+            output.print(&(text + "\n"))?;
+        } else {
+            let look = Look {
+                width: output.width,
+                ansi: output.styled,
+            };
+            let mut text = replay_tables(&scored, look);
+            if !outcomes.is_empty() {
+                text.push_str("\nRequirements\n");
+            }
+            for outcome in &outcomes {
+                let word = if outcome.met { "met    " } else { "NOT MET" };
+                let _ = write!(text, "  {word}  {}", outcome.requirement);
+                if let (false, Some(worst)) = (outcome.met, &outcome.worst) {
+                    let _ = write!(text, "; worst: {}", worst.place(&labels));
+                    if let Some(value) = worst.value {
+                        let _ = write!(text, ", {value:.4}");
+                    }
+                }
+                text.push('\n');
+            }
+            let _ = writeln!(
+                text,
+                "\n{} trials per truth, seed {}, {:.1} s. Written to {}.",
+                precision.trials,
+                precision.seed,
+                record.clock.seconds,
+                written.display()
+            );
+            text.push_str(
+                "A planning aid: it shows the truths that were put in, not that they hold. The \
+                 trial statistician,\nthe ethics committee and the regulator decide.\n",
+            );
+            output.print(&text)?;
+        }
+        Ok(if met {
+            Ending::Done
+        } else {
+            Ending::RequirementNotMet
+        })
+    }
+}

@@ -1,0 +1,248 @@
+//! `windage sweep`: replay over a grid of scenario values, find where a method breaks.
+
+use super::output::{Output, ProgressLine};
+use super::{Ending, Failure, interrupt_flag, read_scenario, run_failure, started_now};
+use crate::plan::Plan;
+use crate::planning::{BreakBracket, GridPoint, Search, find_breaks, grid, point};
+use crate::replay::{ReplayOptions, Study, replay};
+use crate::report::figures::{BreakPoint, SweepFigure, sweep_figure};
+use crate::report::{
+    AxisValue, Clock, DATA_DICTIONARY, Look, Machine, ResultFolder, RunRecord, Scored, SweepPoint,
+    break_points_csv, break_sentences, sweep_csv, sweep_tables,
+};
+use crate::score::Measure;
+use std::path::PathBuf;
+use std::sync::atomic::AtomicBool;
+use std::time::Instant;
+
+/// Arguments of `sweep`.
+#[derive(Debug, clap::Args)]
+pub(super) struct Sweep {
+    /// Scenario file with a `[sweep]` section.
+    scenario: PathBuf,
+    /// Result folder; by default `NAME-result` beside where the program runs.
+    #[arg(short, long, value_name = "FOLDER")]
+    output: Option<PathBuf>,
+    /// Replace a result folder that exists.
+    #[arg(short, long)]
+    force: bool,
+    /// Trials per truth and point, instead of the scenario's number.
+    #[arg(short, long, value_name = "NUMBER")]
+    trials: Option<u64>,
+    /// Seed, instead of the scenario's.
+    #[arg(long, value_name = "NUMBER")]
+    seed: Option<u64>,
+    /// Worker threads; one per core by default. The result does not depend on it.
+    #[arg(
+        long,
+        value_name = "NUMBER",
+        default_value_t = 0,
+        hide_default_value = true
+    )]
+    threads: usize,
+    /// Show no progress.
+    #[arg(short, long)]
+    quiet: bool,
+}
+
+/// What replays the points of a sweep.
+struct Runner<'a> {
+    threads: usize,
+    interrupt: &'a AtomicBool,
+    progress: ProgressLine,
+}
+
+impl Runner<'_> {
+    fn score(&mut self, label: &str, plan: &Plan) -> Result<Scored, Failure> {
+        let study = Study::prepare(plan);
+        let true_values = (0..plan.truths.len())
+            .map(|truth| {
+                study
+                    .true_values(truth)
+                    .iter()
+                    .map(|value| value.value)
+                    .collect()
+            })
+            .collect();
+        let progress = &mut self.progress;
+        let results = replay(
+            &study,
+            &mut ReplayOptions {
+                threads: self.threads,
+                interrupt: self.interrupt,
+                progress: &mut |state| progress.show(label, state),
+                sink: None,
+                diagnostics: false,
+            },
+        );
+        if results.is_err() {
+            self.progress.finish();
+        }
+        let measures = results
+            .map_err(run_failure)?
+            .into_iter()
+            .map(|result| result.measures)
+            .collect();
+        Ok(Scored::judge(plan, true_values, measures).0)
+    }
+}
+
+impl Sweep {
+    pub(super) fn run(self, output: &Output) -> Result<Ending, Failure> {
+        let (scenario, _) = read_scenario(&self.scenario, self.trials, self.seed)?;
+        let Some(sweep) = scenario.sweep() else {
+            return Err(Failure::Usage(format!(
+                "error: {} has no [sweep] section: add one with axes = [{{ path = \"...\", \
+                 values = [...] }}]",
+                self.scenario.display()
+            )));
+        };
+        let points = grid(&scenario, sweep)?;
+        let target = super::result_folder(self.output.as_deref(), &self.scenario);
+        let folder = ResultFolder::begin(&target, self.force).map_err(run_failure)?;
+        let interrupt = interrupt_flag()?;
+        let (started, begun) = (started_now(), Instant::now());
+        let axes: Vec<String> = sweep.axes.iter().map(|axis| axis.path.clone()).collect();
+        let mut runner = Runner {
+            threads: self.threads,
+            interrupt: &interrupt,
+            progress: output.progress(self.quiet),
+        };
+        let search = sweep.break_point.as_ref().and_then(|wanted| {
+            let plan = &points.first()?.plan;
+            Search::of(plan, wanted)
+        });
+        let mut scored = Vec::with_capacity(points.len());
+        let mut judged: Vec<(GridPoint, bool)> = Vec::with_capacity(points.len());
+        for (index, point) in points.iter().enumerate() {
+            let label = format!("point {} of {}: ", index + 1, points.len());
+            let found = runner.score(&label, &point.plan)?;
+            let broken = search
+                .as_ref()
+                .is_some_and(|search| search.broken(&point.plan, &found.measures));
+            judged.push((point.clone(), broken));
+            let values = point.values.iter().map(axis_value).collect();
+            scored.push(SweepPoint {
+                axes: values,
+                scored: found,
+            });
+        }
+        let brackets = match &search {
+            None => Vec::new(),
+            Some(search) => find_breaks(&judged, |values| {
+                let extra = point(&scenario, sweep, values)?;
+                let found = runner.score("break point: ", &extra.plan)?;
+                let broken = search.broken(&extra.plan, &found.measures);
+                Ok::<_, Failure>((extra.plan, broken))
+            })?,
+        };
+        runner.progress.finish();
+        let first = &scored[0].scored;
+        let method = search.as_ref().map_or(0, |search| search.method);
+        let label = first.methods[method].clone();
+        let clock = Clock {
+            started,
+            seconds: begun.elapsed().as_secs_f64(),
+        };
+        let precision = points[0].plan.precision;
+        let record = RunRecord::new(
+            first,
+            scenario.text(),
+            precision.seed,
+            precision.trials,
+            None,
+            clock,
+            Machine::current(super::thread_count(self.threads)),
+        );
+        let write = |name: &str, text: &str| folder.write(name, text.as_bytes());
+        write("scenario.toml", scenario.text()).map_err(run_failure)?;
+        write("run.json", &record.to_json().map_err(run_failure)?).map_err(run_failure)?;
+        write("columns.md", DATA_DICTIONARY).map_err(run_failure)?;
+        write(
+            "sweep.csv",
+            &sweep_csv(&axes, &scored).map_err(run_failure)?,
+        )
+        .map_err(run_failure)?;
+        if search.is_some() {
+            let text = break_points_csv(&axes, &label, &brackets).map_err(run_failure)?;
+            write("break-points.csv", &text).map_err(run_failure)?;
+        }
+        for (name, mut figure) in sweep_figures(&axes, &scored) {
+            mark_breaks(&mut figure, search.as_ref(), &label, &brackets);
+            let drawn = sweep_figure(&name, &figure);
+            write(&format!("figures/{}.svg", drawn.name), &drawn.svg).map_err(run_failure)?;
+        }
+        let written = folder.commit().map_err(run_failure)?;
+        let look = Look {
+            width: output.width,
+            ansi: output.styled,
+        };
+        let mut text = sweep_tables(&axes, &scored, look);
+        if search.is_some() {
+            text.push_str(&break_sentences(&axes, &label, first, &brackets));
+        }
+        text.push_str(&format!(
+            "\n{} points, {} trials per truth and point, seed {}, {:.1} s. Written to {}.\n",
+            points.len(),
+            precision.trials,
+            precision.seed,
+            record.clock.seconds,
+            written.display()
+        ));
+        output.print(&text)?;
+        Ok(Ending::Done)
+    }
+}
+
+fn axis_value(value: &toml::Value) -> AxisValue {
+    match value {
+        toml::Value::Integer(integer) => AxisValue::Number(*integer as f64),
+        toml::Value::Float(float) => AxisValue::Number(*float),
+        toml::Value::String(word) => AxisValue::Word(word.clone()),
+        other => AxisValue::Word(other.to_string()),
+    }
+}
+
+/// Coverage, bias and price along the first axis, for every truth and estimand.
+fn sweep_figures(axes: &[String], points: &[SweepPoint]) -> Vec<(String, SweepFigure)> {
+    let first = &points[0].scored;
+    let mut figures = Vec::new();
+    for (truth, truth_name) in first.truths.iter().enumerate() {
+        for (estimand, estimand_name) in first.estimands.iter().enumerate() {
+            for measure in [Measure::Coverage, Measure::Bias, Measure::Price] {
+                let name = format!(
+                    "{}-{}-{}-{truth_name}-{estimand_name}",
+                    measure.key(),
+                    truth + 1,
+                    estimand + 1
+                );
+                let figure = SweepFigure::from_points(axes, points, truth, estimand, measure);
+                figures.push((name, figure));
+            }
+        }
+    }
+    figures
+}
+
+/// Marks the bracket of the break point in every panel of a coverage figure.
+fn mark_breaks(
+    figure: &mut SweepFigure,
+    search: Option<&Search>,
+    label: &str,
+    brackets: &[BreakBracket],
+) {
+    let Some(search) = search else { return };
+    if figure.measure != Measure::Coverage.key() {
+        return;
+    }
+    for (panel, bracket) in figure.panels.iter_mut().zip(brackets) {
+        if let (Some(from), Some(to)) = (bracket.from, bracket.to) {
+            panel.break_points.push(BreakPoint {
+                method: search.method,
+                from,
+                to,
+                text: label.to_owned(),
+            });
+        }
+    }
+}
