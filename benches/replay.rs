@@ -1,6 +1,6 @@
 //! Cost of a replayed trial and of its stages.
 //!
-//! The job is that of benches/numpy_replay.py: two batches of n/2 units, p independent standard
+//! The job is that of `benches/numpy_replay.py`: two batches of n/2 units, p independent standard
 //! normal covariates, no intercept, batch 2 the top 15 % by predicted outcome, eleven methods on
 //! one contrast. `trial` replays whole trials on one thread; `every candidate drawn` does the same
 //! without the short cut for Gaussian candidates. Stages: drawing and enrolling (with the batch
@@ -135,7 +135,7 @@ fn stages(criterion: &mut Criterion) {
             bencher.iter(|| {
                 study
                     .kernels()
-                    .gram(trial.design(rows.clone()), &all, &mut gram)
+                    .gram(trial.design(rows.clone()), &all, &mut gram);
             });
         });
         let mut factor = gram.clone();

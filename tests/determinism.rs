@@ -113,7 +113,9 @@ fn block_order_does_not_change_a_bit() {
             .collect();
         records.reverse();
         let mut tally = Tally::new(layout(&study, truth));
-        records.iter().for_each(|record| tally.absorb(record));
+        for record in &records {
+            tally.absorb(record);
+        }
         let measures = tally.measures(truth, &study.plan().arms);
         backward.push(TruthResult {
             measures,

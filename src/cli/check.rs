@@ -24,7 +24,7 @@ impl Check {
     pub(super) fn run(self, output: &Output) -> Result<Ending, Failure> {
         let (_, plan) = read_scenario(&self.scenario, None, None)?;
         let Some(index) = self.trial else {
-            output.print(&narrative(&plan, output.width))?;
+            Output::print(&narrative(&plan, output.width))?;
             return Ok(Ending::Done);
         };
         let truth = match &self.truth {
@@ -48,7 +48,7 @@ impl Check {
         let study = Study::without_methods(&plan);
         let mut worker = Worker::new(&study);
         worker.simulate(truth, Phase::Replay, index);
-        output.print(&trial_listing(&plan, worker.trial()))?;
+        Output::print(&trial_listing(&plan, worker.trial()))?;
         Ok(Ending::Done)
     }
 }

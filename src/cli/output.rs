@@ -32,7 +32,7 @@ impl Output {
     }
 
     /// Writes a result to standard output.
-    pub(super) fn print(self, text: &str) -> std::io::Result<()> {
+    pub(super) fn print(text: &str) -> std::io::Result<()> {
         let mut out = stdout().lock();
         out.write_all(text.as_bytes())?;
         out.flush()

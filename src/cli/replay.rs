@@ -7,13 +7,14 @@ use crate::report::{
     Clock, Look, Machine, ResultFolder, RunRecord, Scored, TrialsFile, replay_figures,
     replay_tables, summary_json, write_result,
 };
-use crate::score::{BlockRecord, Labels, evaluate};
+use crate::score::{BlockRecord, Labels, RequirementOutcome, evaluate};
 use std::fmt::Write as _;
 use std::fs::File;
 use std::path::PathBuf;
 use std::time::Instant;
 
 /// Arguments of `replay`.
+#[allow(clippy::struct_excessive_bools)] // one per flag
 #[derive(Debug, clap::Args)]
 pub(super) struct Replay {
     /// Scenario file.
@@ -73,15 +74,7 @@ impl Replay {
         let mut progress = output.progress(self.quiet);
         progress.note("preparing");
         let study = Study::prepare(&plan);
-        let true_values: Vec<Vec<f64>> = (0..plan.truths.len())
-            .map(|truth| {
-                study
-                    .true_values(truth)
-                    .iter()
-                    .map(|value| value.value)
-                    .collect()
-            })
-            .collect();
+        let true_values = study.true_value_table();
         let mut keep = if self.keep_trials {
             let named = Scored::new(&plan, true_values.clone(), Vec::new(), Vec::new());
             let file = folder.create("trials.parquet").map_err(run_failure)?;
@@ -135,40 +128,18 @@ impl Replay {
         let met = outcomes.iter().all(|outcome| outcome.met);
         if self.json {
             let text = summary_json(&scored).map_err(run_failure)?;
-            output.print(&(text + "\n"))?;
+            Output::print(&(text + "\n"))?;
         } else {
-            let look = Look {
-                width: output.width,
-                ansi: output.styled,
-            };
-            let mut text = replay_tables(&scored, look);
-            if !outcomes.is_empty() {
-                text.push_str("\nRequirements\n");
-            }
-            for outcome in &outcomes {
-                let word = if outcome.met { "met    " } else { "NOT MET" };
-                let _ = write!(text, "  {word}  {}", outcome.requirement);
-                if let (false, Some(worst)) = (outcome.met, &outcome.worst) {
-                    let _ = write!(text, "; worst: {}", worst.place(&labels));
-                    if let Some(value) = worst.value {
-                        let _ = write!(text, ", {value:.4}");
-                    }
-                }
-                text.push('\n');
-            }
+            let mut text = tables(&scored, &outcomes, &labels, output);
             let _ = writeln!(
                 text,
-                "\n{} trials per truth, seed {}, {:.1} s. Written to {}.",
+                "\n{} trials per truth, seed {}, {:.1} s. Written to {}.\n{CAUTION}",
                 precision.trials,
                 precision.seed,
                 record.clock.seconds,
                 written.display()
             );
-            text.push_str(
-                "A planning aid: it shows the truths that were put in, not that they hold. The \
-                 trial statistician,\nthe ethics committee and the regulator decide.\n",
-            );
-            output.print(&text)?;
+            Output::print(&text)?;
         }
         Ok(if met {
             Ending::Done
@@ -176,4 +147,37 @@ impl Replay {
             Ending::RequirementNotMet
         })
     }
+}
+
+const CAUTION: &str = "\
+A planning aid: it shows the truths that were put in, not that they hold. The trial statistician,
+the ethics committee and the regulator decide.";
+
+/// The tables of a replay, and what became of the requirements.
+fn tables(
+    scored: &Scored,
+    outcomes: &[RequirementOutcome],
+    labels: &Labels,
+    output: &Output,
+) -> String {
+    let look = Look {
+        width: output.width,
+        ansi: output.styled,
+    };
+    let mut text = replay_tables(scored, look);
+    if !outcomes.is_empty() {
+        text.push_str("\nRequirements\n");
+    }
+    for outcome in outcomes {
+        let word = if outcome.met { "met    " } else { "NOT MET" };
+        let _ = write!(text, "  {word}  {}", outcome.requirement);
+        if let (false, Some(worst)) = (outcome.met, &outcome.worst) {
+            let _ = write!(text, "; worst: {}", worst.place(labels));
+            if let Some(value) = worst.value {
+                let _ = write!(text, ", {value:.4}");
+            }
+        }
+        text.push('\n');
+    }
+    text
 }

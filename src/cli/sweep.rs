@@ -11,6 +11,7 @@ use crate::report::{
     break_points_csv, break_sentences, sweep_csv, sweep_tables,
 };
 use crate::score::Measure;
+use std::fmt::Write as _;
 use std::path::PathBuf;
 use std::sync::atomic::AtomicBool;
 use std::time::Instant;
@@ -55,15 +56,7 @@ struct Runner<'a> {
 impl Runner<'_> {
     fn score(&mut self, label: &str, plan: &Plan) -> Result<Scored, Failure> {
         let study = Study::prepare(plan);
-        let true_values = (0..plan.truths.len())
-            .map(|truth| {
-                study
-                    .true_values(truth)
-                    .iter()
-                    .map(|value| value.value)
-                    .collect()
-            })
-            .collect();
+        let true_values = study.true_value_table();
         let progress = &mut self.progress;
         let results = replay(
             &study,
@@ -154,24 +147,15 @@ impl Sweep {
             clock,
             Machine::current(super::thread_count(self.threads)),
         );
-        let write = |name: &str, text: &str| folder.write(name, text.as_bytes());
-        write("scenario.toml", scenario.text()).map_err(run_failure)?;
-        write("run.json", &record.to_json().map_err(run_failure)?).map_err(run_failure)?;
-        write("columns.md", DATA_DICTIONARY).map_err(run_failure)?;
-        write(
-            "sweep.csv",
-            &sweep_csv(&axes, &scored).map_err(run_failure)?,
-        )
-        .map_err(run_failure)?;
-        if search.is_some() {
-            let text = break_points_csv(&axes, &label, &brackets).map_err(run_failure)?;
-            write("break-points.csv", &text).map_err(run_failure)?;
-        }
-        for (name, mut figure) in sweep_figures(&axes, &scored) {
-            mark_breaks(&mut figure, search.as_ref(), &label, &brackets);
-            let drawn = sweep_figure(&name, &figure);
-            write(&format!("figures/{}.svg", drawn.name), &drawn.svg).map_err(run_failure)?;
-        }
+        write_files(
+            &folder,
+            scenario.text(),
+            &record,
+            &axes,
+            &scored,
+            search.as_ref(),
+            &brackets,
+        )?;
         let written = folder.commit().map_err(run_failure)?;
         let look = Look {
             width: output.width,
@@ -181,17 +165,47 @@ impl Sweep {
         if search.is_some() {
             text.push_str(&break_sentences(&axes, &label, first, &brackets));
         }
-        text.push_str(&format!(
-            "\n{} points, {} trials per truth and point, seed {}, {:.1} s. Written to {}.\n",
+        let _ = writeln!(
+            text,
+            "\n{} points, {} trials per truth and point, seed {}, {:.1} s. Written to {}.",
             points.len(),
             precision.trials,
             precision.seed,
             record.clock.seconds,
             written.display()
-        ));
-        output.print(&text)?;
+        );
+        Output::print(&text)?;
         Ok(Ending::Done)
     }
+}
+
+/// Writes every file of a sweep into its folder.
+fn write_files(
+    folder: &ResultFolder,
+    scenario_text: &str,
+    record: &RunRecord,
+    axes: &[String],
+    scored: &[SweepPoint],
+    search: Option<&Search>,
+    brackets: &[BreakBracket],
+) -> Result<(), Failure> {
+    let method = search.map_or(0, |search| search.method);
+    let label = &scored[0].scored.methods[method];
+    let write = |name: &str, text: &str| folder.write(name, text.as_bytes()).map_err(run_failure);
+    write("scenario.toml", scenario_text)?;
+    write("run.json", &record.to_json().map_err(run_failure)?)?;
+    write("columns.md", DATA_DICTIONARY)?;
+    write("sweep.csv", &sweep_csv(axes, scored).map_err(run_failure)?)?;
+    if search.is_some() {
+        let text = break_points_csv(axes, label, brackets).map_err(run_failure)?;
+        write("break-points.csv", &text)?;
+    }
+    for (name, mut figure) in sweep_figures(axes, scored) {
+        mark_breaks(&mut figure, search, label, brackets);
+        let drawn = sweep_figure(&name, &figure);
+        write(&format!("figures/{}.svg", drawn.name), &drawn.svg)?;
+    }
+    Ok(())
 }
 
 fn axis_value(value: &toml::Value) -> AxisValue {

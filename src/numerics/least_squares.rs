@@ -193,8 +193,8 @@ impl LeastSquares {
         let mut solution = vec![0.0; self.columns];
         for row in (0..self.columns).rev() {
             let mut sum = right[row];
-            for column in row + 1..self.columns {
-                sum -= self.upper(row, column) * right[column];
+            for (column, value) in right.iter().enumerate().take(self.columns).skip(row + 1) {
+                sum -= self.upper(row, column) * value;
             }
             right[row] = sum / self.diagonal[row];
             let original = self.pivots[row];

@@ -183,7 +183,7 @@ fn number(value: &toml::Value) -> Option<f64> {
 fn middle(low: f64, high: f64, whole: bool) -> Option<toml::Value> {
     if whole {
         let value = low.midpoint(high).floor();
-        return (value > low && value < high).then(|| toml::Value::Integer(value as i64));
+        return (value > low && value < high).then_some(toml::Value::Integer(value as i64));
     }
     let close = high - low <= RELATIVE_WIDTH * high.abs().max(low.abs());
     (!close).then(|| toml::Value::Float(low.midpoint(high)))
@@ -199,9 +199,9 @@ mod tests {
         while let Some(value) = middle(low, high, true) {
             let value = number(&value).unwrap();
             if value >= 37.0 {
-                high = value
+                high = value;
             } else {
-                low = value
+                low = value;
             }
         }
         assert!((low - 36.0).abs() < 1e-12 && (high - 37.0).abs() < 1e-12);
@@ -209,9 +209,9 @@ mod tests {
         while let Some(value) = middle(low, high, false) {
             let value = number(&value).unwrap();
             if value >= 0.3 {
-                high = value
+                high = value;
             } else {
-                low = value
+                low = value;
             }
         }
         assert!(low < 0.3 && high >= 0.3 && high - low < 0.01);

@@ -237,7 +237,7 @@ mod tests {
         let mut third = [9.0; 4];
         transform.fill(0, &latent, &mut second);
         transform.fill(1, &latent, &mut third);
-        assert_eq!(second.map(|v| v as u8), [0, 1, 1, 0]);
-        assert_eq!(third.map(|v| v as u8), [0, 0, 0, 1]);
+        assert_eq!(second.map(|v| v > 0.5), [false, true, true, false]);
+        assert_eq!(third.map(|v| v > 0.5), [false, false, false, true]);
     }
 }

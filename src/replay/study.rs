@@ -217,6 +217,14 @@ impl Study {
         &self.true_values[truth]
     }
 
+    /// True values of all truths, one row per truth, one entry per estimand.
+    #[must_use]
+    pub fn true_value_table(&self) -> Vec<Vec<f64>> {
+        let rows = self.true_values.iter();
+        rows.map(|row| row.iter().map(|value| value.value).collect())
+            .collect()
+    }
+
     /// The pilot replay, if one was needed.
     #[must_use]
     pub fn pilot(&self) -> Option<&Pilot> {

@@ -40,10 +40,10 @@ mod tests {
     proptest! {
         #[test]
         fn nobody_passed_over_scores_better(
-            scores in prop::collection::vec(-3i32..4, 1..60), share in 0.0f64..1.0,
+            scores in prop::collection::vec(-3i32..4, 1..60), excess in 0usize..60,
         ) {
             let scores: Vec<f64> = scores.into_iter().map(f64::from).collect();
-            let size = 1 + (share * (scores.len() - 1) as f64) as usize;
+            let size = 1 + excess % scores.len();
             for (tail, sign) in [(Tail::Top, 1.0), (Tail::Bottom, -1.0)] {
                 let (mut order, mut chosen) = (Vec::new(), Vec::new());
                 choose(&scores, tail, size, &mut order, &mut chosen);
@@ -51,8 +51,8 @@ mod tests {
                 let inside = |i: usize| chosen.iter().any(|choice| choice.candidate == i);
                 let worst = chosen.iter().map(|c| sign * scores[c.candidate])
                     .fold(f64::INFINITY, f64::min);
-                for i in 0..scores.len() {
-                    prop_assert!(inside(i) || sign * scores[i] <= worst);
+                for (i, score) in scores.iter().enumerate() {
+                    prop_assert!(inside(i) || sign * score <= worst);
                 }
                 prop_assert!(chosen.windows(2).all(|pair| pair[0].candidate < pair[1].candidate));
             }

@@ -91,9 +91,9 @@ mod tests {
         #[test]
         fn probabilities_sum_to_the_size(
             scores in prop::collection::vec(-4.0f64..4.0, 2..50),
-            share in 0.01f64..0.99, strength in -3.0f64..3.0,
+            excess in 0usize..50, strength in -3.0f64..3.0,
         ) {
-            let size = ((share * scores.len() as f64) as usize).max(1);
+            let size = 1 + excess % (scores.len() - 1);
             let mut probabilities = Vec::new();
             inclusion_probabilities(&scores, strength, size, &mut probabilities);
             let total: f64 = probabilities.iter().sum();
