@@ -9,6 +9,10 @@ use statrs::function::gamma::ln_gamma;
 
 /// Newton steps after a coarse root; two double the digits twice.
 const POLISHING_STEPS: usize = 3;
+/// Degrees of freedom from which the expansion about the normal law is the more accurate.
+const LARGE_DEGREES: f64 = 1e4;
+/// Bound on the Newton steps of a quantile that may start far off.
+const MOST_STEPS: usize = 40;
 
 /// Distribution function of the standard normal law.
 #[must_use]
@@ -56,6 +60,17 @@ fn student_t_density(t: f64, df: f64) -> f64 {
     (log_constant - df.midpoint(1.0) * (t * t / df).ln_1p()).exp()
 }
 
+/// Quantile of Student's t law from the standard normal quantile `z` by its expansion in `1/df`
+/// (Abramowitz & Stegun 1964, 26.7.5); the next term is of order `z^11/df^5`.
+fn student_t_expansion(z: f64, df: f64) -> f64 {
+    let s = z * z;
+    let g1 = z * (s + 1.0) / 4.0;
+    let g2 = z * ((5.0 * s + 16.0) * s + 3.0) / 96.0;
+    let g3 = z * (((3.0 * s + 19.0) * s + 17.0) * s - 15.0) / 384.0;
+    let g4 = z * ((((79.0 * s + 776.0) * s + 1482.0) * s - 1920.0) * s - 945.0) / 92_160.0;
+    z + (g1 + (g2 + (g3 + g4 / df) / df) / df) / df
+}
+
 /// Quantile of Student's t law; `df` may be infinite.
 #[must_use]
 pub fn student_t_quantile(probability: f64, df: f64) -> f64 {
@@ -67,6 +82,9 @@ pub fn student_t_quantile(probability: f64, df: f64) -> f64 {
     }
     if (probability - 0.5).abs() < f64::EPSILON {
         return 0.0;
+    }
+    if df >= LARGE_DEGREES {
+        return student_t_expansion(normal_quantile(probability), df);
     }
     // The smaller tail keeps its relative precision; the law is symmetric.
     let tail = probability.min(1.0 - probability);
@@ -84,13 +102,19 @@ pub fn student_t_quantile(probability: f64, df: f64) -> f64 {
     } else {
         f64::MAX.sqrt()
     };
-    for _ in 0..POLISHING_STEPS {
+    for _ in 0..MOST_STEPS {
         let density = student_t_density(t, df);
-        let step = (student_t_cdf(-t, df) - tail) / density;
-        if !step.is_finite() {
+        let found = student_t_cdf(-t, df);
+        // Heavy tails are powers of t: there Newton's step is taken on logarithms of both.
+        let next = if t > 1.0 {
+            t * ((found / tail).ln() * found / (t * density)).exp()
+        } else {
+            t + (found - tail) / density
+        };
+        if !next.is_finite() || (next - t).abs() <= 2.0 * f64::EPSILON * t.abs() {
             break;
         }
-        t += step;
+        t = next;
     }
     t.copysign(probability - 0.5)
 }
