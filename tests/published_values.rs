@@ -3,6 +3,7 @@
 mod common;
 
 use serde_json::Value;
+use std::fmt::Write as _;
 use std::path::Path;
 use windage::numerics::distribution::{
     clopper_pearson, f_quantile, normal_cdf, normal_quantile, student_t_quantile,
@@ -114,7 +115,7 @@ fn least_squares_reaches_the_certified_values() {
     }
 }
 
-/// statsmodels 0.15.0 on the diabetes data (see tests/reference/make_diabetes_sandwich.py): the
+/// statsmodels 0.15.0 on the diabetes data (see `tests/reference/make_diabetes_sandwich.py`): the
 /// whole program, from a roster scenario whose one batch enrols all 442 patients.
 #[test]
 fn sandwich_variances_agree_with_a_reference_library() {
@@ -125,17 +126,21 @@ fn sandwich_variances_agree_with_a_reference_library() {
         .iter()
         .map(|name| name.as_str().expect("text").to_owned())
         .collect();
-    let estimands: String = names
-        .iter()
-        .map(|name| {
-            format!("[[estimand]]\nname = \"of {name}\"\ncontrast = {{ \"{name}\" = 1.0 }}\n")
-        })
-        .collect();
+    let mut estimands = String::new();
+    for name in &names {
+        let _ = writeln!(
+            estimands,
+            "[[estimand]]\nname = \"of {name}\"\ncontrast = {{ \"{name}\" = 1.0 }}"
+        );
+    }
     let forms = ["model", "HC0", "HC1", "HC2", "HC3"];
-    let methods: String = forms
-        .iter()
-        .map(|form| format!("[[method]]\nkind = \"least-squares\"\nvariance = \"{form}\"\n"))
-        .collect();
+    let mut methods = String::new();
+    for form in forms {
+        let _ = writeln!(
+            methods,
+            "[[method]]\nkind = \"least-squares\"\nvariance = \"{form}\""
+        );
+    }
     let covariates: Vec<String> = names[1..]
         .iter()
         .map(|name| format!("\"{name}\""))
@@ -231,7 +236,7 @@ fn exact_limits_agree_with_a_printed_table() {
     }
 }
 
-/// SciPy 1.17.1 (see tests/reference/make_distribution_values.py).
+/// `SciPy` 1.17.1 (see `tests/reference/make_distribution_values.py`).
 #[test]
 fn distributions_agree_with_a_reference_library() {
     let expected = reference("distributions.json");

@@ -8,15 +8,20 @@
 mod common;
 
 use common::{results, value};
+use std::fmt::Write as _;
 use windage::score::Measure;
 
 const TRIALS: f64 = 4000.0;
 
 fn scenario(p: usize, n: usize) -> String {
     let half = n / 2;
-    let estimands: String = (1..=p)
-        .map(|j| format!("[[estimand]]\nname = \"x{j}\"\ncontrast = {{ x{j} = 1.0 }}\n"))
-        .collect();
+    let mut estimands = String::new();
+    for j in 1..=p {
+        let _ = writeln!(
+            estimands,
+            "[[estimand]]\nname = \"x{j}\"\ncontrast = {{ x{j} = 1.0 }}"
+        );
+    }
     format!(
         r#"
 format = 1

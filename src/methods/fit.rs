@@ -104,6 +104,7 @@ impl Fit {
                 Ok(()) => {
                     self.coefficients.copy_from_slice(orthogonal.coefficients());
                     self.residual_squares = orthogonal.residual_sum_of_squares();
+                    self.fill_residuals(model, scratch, kernels);
                     self.state = State::Orthogonal(orthogonal);
                 }
                 Err(_) => self.state = State::Failed(deficient),
@@ -112,15 +113,20 @@ impl Fit {
         }
         kernels.solve_lower(&self.factor, self.p, &mut self.coefficients);
         kernels.solve_lower_transposed(&self.factor, self.p, &mut self.coefficients);
-        scratch.residuals.clear();
-        scratch.residuals.resize(self.units, 0.0);
-        let fitted = &mut scratch.residuals;
-        kernels.add_combination(model.design(), model.stored, &self.coefficients, fitted);
-        for (value, outcome) in fitted.iter_mut().zip(outcomes) {
+        self.fill_residuals(model, scratch, kernels);
+        self.residual_squares = kernels.dot(&scratch.residuals, &scratch.residuals);
+        self.state = State::Normal;
+    }
+
+    /// Residuals of the rows, left in the scratch space.
+    fn fill_residuals(&self, model: &ModelRows<'_>, scratch: &mut FitScratch, kernels: Kernels) {
+        let residuals = &mut scratch.residuals;
+        residuals.clear();
+        residuals.resize(self.units, 0.0);
+        kernels.add_combination(model.design(), model.stored, &self.coefficients, residuals);
+        for (value, outcome) in residuals.iter_mut().zip(model.outcomes()) {
             *value = outcome - *value;
         }
-        self.residual_squares = kernels.dot(fitted, fitted);
-        self.state = State::Normal;
     }
 
     /// Whether there is a fit.
@@ -207,7 +213,7 @@ impl Fit {
     pub(super) fn leverages(
         &self,
         model: &ModelRows<'_>,
-        whitened: &mut Vec<f64>,
+        tile: &mut Vec<f64>,
         kernels: Kernels,
         out: &mut Vec<f64>,
     ) {
@@ -218,13 +224,6 @@ impl Fit {
             fit.leverages(out);
             return;
         }
-        whitened.clear();
-        whitened.resize(count * self.p, 0.0);
-        kernels.whiten(model.design(), model.stored, &self.factor, whitened);
-        for column in whitened.chunks_exact(count) {
-            for (leverage, value) in out.iter_mut().zip(column) {
-                *leverage += value * value;
-            }
-        }
+        kernels.leverages(model.design(), model.stored, &self.factor, tile, out);
     }
 }

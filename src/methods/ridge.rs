@@ -46,14 +46,8 @@ pub(super) fn estimate(bench: &mut Workbench, estimand: usize, penalty: f64) -> 
     kernels.solve_lower(&scratch.factor, p, coefficients);
     kernels.solve_lower_transposed(&scratch.factor, p, coefficients);
     // tr H = p - λ Σ_j [(S+Λ)^{-1}]_jj over the penalised coefficients.
-    let mut trace = 0.0;
-    for index in (0..p).filter(|&index| Some(index) != bench.intercept) {
-        scratch.unit.clear();
-        scratch.unit.resize(p, 0.0);
-        scratch.unit[index] = 1.0;
-        kernels.solve_lower(&scratch.factor, p, &mut scratch.unit);
-        trace += kernels.dot(&scratch.unit, &scratch.unit);
-    }
+    let penalised = (0..p).filter(|&index| Some(index) != bench.intercept);
+    let trace = kernels.inverse_diagonal_sum(&scratch.factor, p, penalised, &mut scratch.unit);
     let degrees = units as f64 - (p as f64 - penalty * trace);
     if degrees <= 0.0 {
         return Err(NoAnswer::NoResidualDegrees);

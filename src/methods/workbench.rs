@@ -31,8 +31,10 @@ pub struct Workbench {
     /// Rows of the analysis design, row-major.
     pub(super) rows: Vec<f64>,
     pub(super) weights: Vec<f64>,
+    /// Estimand that `weights` belong to.
+    weighted: Option<usize>,
     pub(super) batch_values: Vec<(f64, f64)>,
-    whitened: Vec<f64>,
+    tile: Vec<f64>,
     pub(super) scratch: FitScratch,
     pub(super) ridge: RidgeScratch,
     pub(super) sum_of_outcome_squares: f64,
@@ -79,8 +81,9 @@ impl Workbench {
             row_squares: Vec::new(),
             rows: Vec::new(),
             weights: Vec::new(),
+            weighted: None,
             batch_values: Vec::new(),
-            whitened: Vec::new(),
+            tile: Vec::new(),
             scratch: FitScratch::default(),
             ridge: RidgeScratch::default(),
             sum_of_outcome_squares: 0.0,
@@ -130,6 +133,7 @@ impl Workbench {
 
     /// Prepares all that the methods need from a finished trial.
     pub fn prepare(&mut self, trial: &Trial, sums: &BatchSums) {
+        self.weighted = None;
         let kernels = self.kernels;
         if self.needs.pooled_fit {
             let all = sums.prefix(sums.batches());
@@ -146,7 +150,7 @@ impl Workbench {
                 .solve(&model, NoAnswer::RankDeficient, &mut self.scratch, kernels);
             self.sum_of_outcome_squares = kernels.dot(trial.outcomes(), trial.outcomes());
             if self.needs.residuals && self.pooled.answered().is_ok() {
-                self.fill_residuals(trial);
+                std::mem::swap(&mut self.residuals, &mut self.scratch.residuals);
             }
             if self.needs.leverages && self.pooled.answered().is_ok() {
                 let model = ModelRows {
@@ -155,7 +159,7 @@ impl Workbench {
                     stored: &self.stored,
                 };
                 self.pooled
-                    .leverages(&model, &mut self.whitened, kernels, &mut self.leverages);
+                    .leverages(&model, &mut self.tile, kernels, &mut self.leverages);
             }
         }
         let last = self.batch_fits.len() - 1;
@@ -185,19 +189,6 @@ impl Workbench {
         }
     }
 
-    fn fill_residuals(&mut self, trial: &Trial) {
-        self.residuals.clear();
-        self.residuals.resize(trial.rows(), 0.0);
-        let fitted = &mut self.residuals;
-        let coefficients = self.pooled.coefficients();
-        let design = trial.design(0..trial.rows());
-        self.kernels
-            .add_combination(design, &self.stored, coefficients, fitted);
-        for (value, outcome) in fitted.iter_mut().zip(trial.outcomes()) {
-            *value = outcome - *value;
-        }
-    }
-
     /// Copies the analysis design row by row and sums the squares of each row.
     fn fill_rows(&mut self, trial: &Trial) {
         /// Rows copied together, so that the columns are read in cache lines.
@@ -224,6 +215,10 @@ impl Workbench {
 
     /// `a = X(X'X)^{-1}c` of the pooled fit, into `weights`.
     pub(super) fn fill_contrast_weights(&mut self, trial: &Trial, estimand: usize) {
+        if self.weighted == Some(estimand) {
+            return;
+        }
+        self.weighted = Some(estimand);
         let model = ModelRows {
             trial,
             rows: 0..trial.rows(),

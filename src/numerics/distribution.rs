@@ -9,8 +9,8 @@ use statrs::function::gamma::ln_gamma;
 
 /// Newton steps after a coarse root; two double the digits twice.
 const POLISHING_STEPS: usize = 3;
-/// Degrees of freedom from which the expansion about the normal law is the more accurate.
-const LARGE_DEGREES: f64 = 1e4;
+/// Relative size below which a term of an expansion is left out.
+const NEGLIGIBLE: f64 = 1e-11;
 /// Bound on the Newton steps of a quantile that may start far off.
 const MOST_STEPS: usize = 40;
 
@@ -61,14 +61,17 @@ fn student_t_density(t: f64, df: f64) -> f64 {
 }
 
 /// Quantile of Student's t law from the standard normal quantile `z` by its expansion in `1/df`
-/// (Abramowitz & Stegun 1964, 26.7.5); the next term is of order `z^11/df^5`.
-fn student_t_expansion(z: f64, df: f64) -> f64 {
+/// (Abramowitz & Stegun 1964, 26.7.5, recalled), if its fifth term is negligible.
+fn student_t_expansion(z: f64, df: f64) -> Option<f64> {
     let s = z * z;
-    let g1 = z * (s + 1.0) / 4.0;
-    let g2 = z * ((5.0 * s + 16.0) * s + 3.0) / 96.0;
-    let g3 = z * (((3.0 * s + 19.0) * s + 17.0) * s - 15.0) / 384.0;
-    let g4 = z * ((((79.0 * s + 776.0) * s + 1482.0) * s - 1920.0) * s - 945.0) / 92_160.0;
-    z + (g1 + (g2 + (g3 + g4 / df) / df) / df) / df
+    let g1 = (s + 1.0) / 4.0;
+    let g2 = ((5.0 * s + 16.0) * s + 3.0) / 96.0;
+    let g3 = (((3.0 * s + 19.0) * s + 17.0) * s - 15.0) / 384.0;
+    let g4 = ((((79.0 * s + 776.0) * s + 1482.0) * s - 1920.0) * s - 945.0) / 92_160.0;
+    // Size of the fifth term, all signs taken as positive.
+    let g5 =
+        (((((27.0 * s + 339.0) * s + 930.0) * s + 1782.0) * s + 765.0) * s + 17_955.0) / 368_640.0;
+    (g5 < NEGLIGIBLE * df.powi(5)).then(|| z + z * (g1 + (g2 + (g3 + g4 / df) / df) / df) / df)
 }
 
 /// Quantile of Student's t law; `df` may be infinite.
@@ -83,8 +86,8 @@ pub fn student_t_quantile(probability: f64, df: f64) -> f64 {
     if (probability - 0.5).abs() < f64::EPSILON {
         return 0.0;
     }
-    if df >= LARGE_DEGREES {
-        return student_t_expansion(normal_quantile(probability), df);
+    if let Some(quantile) = student_t_expansion(normal_quantile(probability), df) {
+        return quantile;
     }
     // The smaller tail keeps its relative precision; the law is symmetric.
     let tail = probability.min(1.0 - probability);

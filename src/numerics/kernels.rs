@@ -187,13 +187,64 @@ impl Kernels {
         );
     }
 
-    /// Solves `T L' = X` for the `rows × p` matrix `T` (column-major, leading dimension `rows`):
-    /// row `i` of `T` is `L^{-1} x_i`, so its squared length is the leverage of row `i`.
-    pub fn whiten(self, x: Columns<'_>, used: &[usize], factor: &[f64], out: &mut [f64]) {
+    /// Squared lengths `x_i'(LL')^{-1}x_i` of the whitened rows: their leverages when `L` is the
+    /// factor of their Gram matrix. `tile` is scratch space that grows as needed.
+    pub fn leverages(
+        self,
+        x: Columns<'_>,
+        used: &[usize],
+        factor: &[f64],
+        tile: &mut Vec<f64>,
+        out: &mut [f64],
+    ) {
+        if tile.len() < used.len() * TILE {
+            tile.resize(used.len() * TILE, 0.0);
+        }
+        let leverages = Leverages {
+            x,
+            used,
+            factor,
+            tile,
+            out,
+        };
+        match self.arch {
+            Some(arch) => arch.dispatch(leverages),
+            None => leverages.with_simd(pulp::Scalar::new()),
+        }
+    }
+
+    /// Sum of squares of the columns `columns` of the inverse of a Cholesky factor, which are the
+    /// diagonal entries of the inverse of the matrix it came from. `scratch` holds one column.
+    #[must_use]
+    pub fn inverse_diagonal_sum(
+        self,
+        factor: &[f64],
+        p: usize,
+        columns: impl Iterator<Item = usize>,
+        scratch: &mut Vec<f64>,
+    ) -> f64 {
+        scratch.clear();
+        scratch.resize(p, 0.0);
         self.run(
             #[inline(always)]
-            || whiten(x, used, factor, out),
-        );
+            || {
+                let mut total = 0.0;
+                for first in columns {
+                    // Column `first` of the inverse is zero above its diagonal.
+                    let b = &mut scratch[first..];
+                    b.fill(0.0);
+                    b[0] = 1.0;
+                    for j in first..p {
+                        let column = &factor[j * p + j..(j + 1) * p];
+                        let value = b[j - first] / column[0];
+                        b[j - first] = value;
+                        total += value * value;
+                        add_scaled(-value, &column[1..], &mut b[j - first + 1..]);
+                    }
+                }
+                total
+            },
+        )
     }
 }
 
@@ -220,7 +271,12 @@ pub(crate) fn dot(a: &[f64], b: &[f64]) -> f64 {
     total
 }
 
-/// Gram matrix in blocks of two columns by two, one pass over memory for each block.
+/// Columns of a block of the Gram matrix: `TALL × WIDE` inner products, each in eight partial
+/// sums, fill twelve 256-bit registers and leave room for the operands.
+const TALL: usize = 3;
+const WIDE: usize = 2;
+
+/// Gram matrix block by block, one pass over memory for each block.
 ///
 /// Written with explicit vectors: left to itself, the compiler shuffles where it should stream,
 /// at a third of the speed.
@@ -237,17 +293,15 @@ impl WithSimd for Gram<'_, '_> {
     fn with_simd<S: Simd>(self, simd: S) {
         let Self { x, used, out } = self;
         let p = used.len();
-        for i in (0..p).step_by(2) {
-            let wide = i + 1 < p;
-            let a0 = x.column(used[i]);
-            let a1 = if wide { x.column(used[i + 1]) } else { a0 };
-            for j in (i..p).step_by(2) {
-                let b0 = x.column(used[j]);
-                let pair = j + 1 < p;
-                let b1 = if pair { x.column(used[j + 1]) } else { b0 };
-                let products = two_by_two(simd, [a0, a1], [b0, b1]);
-                for (di, row) in products.iter().enumerate().take(1 + usize::from(wide)) {
-                    for (dj, &value) in row.iter().enumerate().take(1 + usize::from(pair)) {
+        // At the edge a block repeats the last column.
+        let column = |index: usize| x.column(used[index.min(p - 1)]);
+        for i in (0..p).step_by(TALL) {
+            let a: [&[f64]; TALL] = std::array::from_fn(|offset| column(i + offset));
+            for j in (i / WIDE * WIDE..p).step_by(WIDE) {
+                let b: [&[f64]; WIDE] = std::array::from_fn(|offset| column(j + offset));
+                let products = block_products(simd, a, b);
+                for (di, row) in products.iter().enumerate().take(p - i) {
+                    for (dj, &value) in row.iter().enumerate().take(p - j) {
                         out[(j + dj) * p + i + di] = value;
                         out[(i + di) * p + j + dj] = value;
                     }
@@ -257,45 +311,101 @@ impl WithSimd for Gram<'_, '_> {
     }
 }
 
-/// Inner products of two columns with two columns, each with eight interleaved partial sums
+/// Inner products of some columns with some others, each with eight interleaved partial sums
 /// whatever the width of a vector.
 #[inline(always)]
-fn two_by_two<S: Simd>(simd: S, a: [&[f64]; 2], b: [&[f64]; 2]) -> [[f64; 2]; 2] {
-    let (a0, a0_rest) = a[0].as_chunks::<LANES>();
-    let (a1, a1_rest) = a[1].as_chunks::<LANES>();
-    let (b0, b0_rest) = b[0].as_chunks::<LANES>();
-    let (b1, b1_rest) = b[1].as_chunks::<LANES>();
+fn block_products<S: Simd>(simd: S, a: [&[f64]; TALL], b: [&[f64]; WIDE]) -> [[f64; WIDE]; TALL] {
+    let rows = a[0].len();
+    let chunks = rows / LANES;
+    let a_chunks: [&[[f64; LANES]]; TALL] = a.map(|column| &column.as_chunks().0[..chunks]);
+    let b_chunks: [&[[f64; LANES]]; WIDE] = b.map(|column| &column.as_chunks().0[..chunks]);
     let vectors = LANES / S::F64_LANES;
-    let zero = simd.splat_f64s(0.0);
-    let mut sums = [[[zero; LANES]; 2]; 2];
-    for (((a0, a1), b0), b1) in a0.iter().zip(a1).zip(b0).zip(b1) {
-        let a = [S::as_simd_f64s(a0).0, S::as_simd_f64s(a1).0];
-        let b = [S::as_simd_f64s(b0).0, S::as_simd_f64s(b1).0];
+    let mut sums = [[[simd.splat_f64s(0.0); LANES]; WIDE]; TALL];
+    for chunk in 0..chunks {
+        #[allow(clippy::needless_range_loop)] // indexes the operands as well as the sums
         for vector in 0..vectors {
-            for i in 0..2 {
-                for j in 0..2 {
-                    let product = simd.mul_f64s(a[i][vector], b[j][vector]);
+            let right = b_chunks.map(|column| S::as_simd_f64s(&column[chunk]).0[vector]);
+            for i in 0..TALL {
+                let left = S::as_simd_f64s(&a_chunks[i][chunk]).0[vector];
+                for j in 0..WIDE {
+                    let product = simd.mul_f64s(left, right[j]);
                     sums[i][j][vector] = simd.add_f64s(sums[i][j][vector], product);
                 }
             }
         }
     }
-    let mut out = [[0.0; 2]; 2];
-    for i in 0..2 {
-        for j in 0..2 {
+    let mut out = [[0.0; WIDE]; TALL];
+    for i in 0..TALL {
+        for j in 0..WIDE {
             let mut lanes = [0.0; LANES];
             let (parts, _) = S::as_mut_simd_f64s(&mut lanes);
             parts[..vectors].copy_from_slice(&sums[i][j][..vectors]);
             out[i][j] = fold(lanes);
+            for row in chunks * LANES..rows {
+                out[i][j] += a[i][row] * b[j][row];
+            }
         }
     }
-    for (((a0, a1), b0), b1) in a0_rest.iter().zip(a1_rest).zip(b0_rest).zip(b1_rest) {
-        out[0][0] += a0 * b0;
-        out[0][1] += a0 * b1;
-        out[1][0] += a1 * b0;
-        out[1][1] += a1 * b1;
-    }
     out
+}
+
+/// Rows whitened together: four 256-bit registers of eight rows each.
+const TILE: usize = 32;
+
+/// Squared lengths of the whitened rows, tile by tile, so that a tile's columns stay in the
+/// first-level cache.
+struct Leverages<'a, 'b> {
+    x: Columns<'a>,
+    used: &'b [usize],
+    factor: &'b [f64],
+    tile: &'b mut [f64],
+    out: &'b mut [f64],
+}
+
+impl WithSimd for Leverages<'_, '_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn with_simd<S: Simd>(self, simd: S) {
+        let Self {
+            x,
+            used,
+            factor,
+            tile,
+            out,
+        } = self;
+        let p = used.len();
+        let vectors = TILE / S::F64_LANES;
+        let (tile, _) = tile[..p * TILE].as_chunks_mut::<TILE>();
+        for start in (0..x.rows()).step_by(TILE) {
+            let count = TILE.min(x.rows() - start);
+            let mut squares = [0.0; TILE];
+            for j in 0..p {
+                let (done, rest) = tile.split_at_mut(j);
+                let target = &mut rest[0];
+                target[..count].copy_from_slice(&x.column(used[j])[start..start + count]);
+                let mut sums = [simd.splat_f64s(0.0); TILE];
+                let (own, _) = S::as_mut_simd_f64s(target);
+                sums[..vectors].copy_from_slice(&own[..vectors]);
+                for (k, column) in done.iter().enumerate() {
+                    let weight = simd.splat_f64s(factor[k * p + j]);
+                    let (column, _) = S::as_simd_f64s(column);
+                    for vector in 0..vectors {
+                        let product = simd.mul_f64s(weight, column[vector]);
+                        sums[vector] = simd.sub_f64s(sums[vector], product);
+                    }
+                }
+                let scale = simd.splat_f64s(1.0 / factor[j * p + j]);
+                let (square, _) = S::as_mut_simd_f64s(&mut squares);
+                for vector in 0..vectors {
+                    own[vector] = simd.mul_f64s(sums[vector], scale);
+                    let product = simd.mul_f64s(own[vector], own[vector]);
+                    square[vector] = simd.add_f64s(square[vector], product);
+                }
+            }
+            out[start..start + count].copy_from_slice(&squares[..count]);
+        }
+    }
 }
 
 /// `y += factor × x`.
@@ -371,24 +481,6 @@ fn cholesky(matrix: &mut [f64], p: usize, threshold: f64) -> f64 {
     smallest
 }
 
-#[inline(always)]
-fn whiten(x: Columns<'_>, used: &[usize], factor: &[f64], out: &mut [f64]) {
-    let p = used.len();
-    let rows = x.rows();
-    for j in 0..p {
-        let (done, rest) = out.split_at_mut(j * rows);
-        let target = &mut rest[..rows];
-        target.copy_from_slice(x.column(used[j]));
-        for k in 0..j {
-            add_scaled(-factor[k * p + j], &done[k * rows..(k + 1) * rows], target);
-        }
-        let scale = 1.0 / factor[j * p + j];
-        for value in target.iter_mut() {
-            *value *= scale;
-        }
-    }
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -439,10 +531,14 @@ mod tests {
                 for (a, b) in solution.iter().zip(expected.iter()) {
                     prop_assert!((a - b).abs() <= 1e-8 * (1.0 + b.abs()), "{a} {b}");
                 }
-                let mut whitened = vec![0.0; rows * p];
-                kernels.whiten(view, &used, &factor, &mut whitened);
-                let trace: f64 = whitened.iter().map(|v| v * v).sum();
+                let mut leverages = vec![0.0; rows];
+                kernels.leverages(view, &used, &factor, &mut Vec::new(), &mut leverages);
+                let trace: f64 = leverages.iter().sum();
                 prop_assert!((trace - p as f64).abs() < 1e-8 * p as f64, "leverages sum to p");
+                let diagonal =
+                    kernels.inverse_diagonal_sum(&factor, p, 0..p, &mut Vec::new());
+                let inverse = (reference.transpose() * &reference).try_inverse().unwrap();
+                prop_assert!((diagonal / inverse.trace() - 1.0).abs() < 1e-8);
                 let mut fitted = vec![0.0; rows];
                 kernels.add_combination(view, &used, &solution, &mut fitted);
                 let direct = &reference * DVector::from_column_slice(&solution);
@@ -450,7 +546,7 @@ mod tests {
                     prop_assert!((a - b).abs() <= 1e-10 * (1.0 + b.abs()));
                 }
                 bits.push(
-                    [gram, factor, solution, whitened, fitted]
+                    [gram, factor, solution, leverages, vec![diagonal], fitted]
                         .concat().iter().map(|v| v.to_bits()).collect(),
                 );
             }

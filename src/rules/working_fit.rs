@@ -13,6 +13,8 @@ const ALIAS_TOLERANCE: f64 = 1e-9;
 pub struct WorkingFit {
     terms: Vec<Term>,
     positions: Vec<usize>,
+    /// 0, 1, 2, ... : the regressors of the factor in their own order.
+    order: Vec<usize>,
     penalty: f64,
     factor: Vec<f64>,
     coefficients: Vec<f64>,
@@ -31,6 +33,7 @@ impl WorkingFit {
         Self {
             terms: fit.model.terms.clone(),
             positions,
+            order: (0..p).collect(),
             penalty: fit.penalty,
             factor: vec![0.0; p * p],
             coefficients: vec![0.0; p],
@@ -66,6 +69,12 @@ impl WorkingFit {
     #[must_use]
     pub fn terms(&self) -> &[Term] {
         &self.terms
+    }
+
+    /// The regressors' positions in the factor, in order.
+    #[must_use]
+    pub fn order(&self) -> &[usize] {
+        &self.order
     }
 
     /// Lower Cholesky factor of the (penalised) Gram matrix.

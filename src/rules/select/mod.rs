@@ -23,6 +23,7 @@ pub struct Selector {
     scores: Vec<f64>,
     order: Vec<usize>,
     scratch: Vec<f64>,
+    tile: Vec<f64>,
 }
 
 /// A candidate that is enrolled, with the probability of that.
@@ -51,6 +52,7 @@ impl Selector {
             scores: Vec::new(),
             order: Vec::new(),
             scratch: Vec::new(),
+            tile: Vec::new(),
             part: part.clone(),
         }
     }
@@ -121,7 +123,8 @@ impl Selector {
             SelectRule::Uncertain { .. } => {
                 if let Some(fit) = &mut self.information {
                     fit.update(past, kernels);
-                    uncertain::score(fit, pool, kernels, &mut self.scratch, &mut self.scores);
+                    let (scratch, tile) = (&mut self.scratch, &mut self.tile);
+                    uncertain::score(fit, pool, kernels, scratch, tile, &mut self.scores);
                 }
                 let tail = crate::plan::Tail::Top;
                 quantile::choose(&self.scores, tail, size, &mut self.order, chosen);

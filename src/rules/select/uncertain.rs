@@ -11,15 +11,15 @@ pub(super) fn score(
     pool: &Pool,
     kernels: Kernels,
     scratch: &mut Vec<f64>,
+    tile: &mut Vec<f64>,
     scores: &mut Vec<f64>,
 ) {
     let count = pool.count();
     let p = fit.terms().len();
     scratch.clear();
-    scratch.resize(2 * count * p, 0.0);
-    let (rows, whitened) = scratch.split_at_mut(count * p);
+    scratch.resize(count * p, 0.0);
     for (index, term) in fit.terms().iter().enumerate() {
-        let target = &mut rows[index * count..(index + 1) * count];
+        let target = &mut scratch[index * count..(index + 1) * count];
         match *term {
             Term::Intercept => target.fill(1.0),
             Term::Covariate(column) => {
@@ -33,16 +33,6 @@ pub(super) fn score(
     if count == 0 {
         return;
     }
-    let used: Vec<usize> = (0..p).collect();
-    kernels.whiten(
-        Columns::new(rows, count, 0, count),
-        &used,
-        fit.factor(),
-        whitened,
-    );
-    for column in whitened.chunks_exact(count) {
-        for (score, value) in scores.iter_mut().zip(column) {
-            *score += value * value;
-        }
-    }
+    let rows = Columns::new(scratch, count, 0, count);
+    kernels.leverages(rows, fit.order(), fit.factor(), tile, scores);
 }
