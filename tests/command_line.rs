@@ -1,6 +1,7 @@
 //! The program as a user runs it: what is printed, what is written, and the exit codes.
 
 use assert_cmd::Command;
+use std::fmt::Write as _;
 use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::{Child, Stdio};
@@ -382,7 +383,7 @@ fn a_roster_with_text_in_a_number_column_names_the_row() {
         } else {
             (row % 7).to_string()
         };
-        rows.push_str(&format!("{row},{value}\n"));
+        let _ = writeln!(rows, "{row},{value}");
     }
     fs::write(desk.path("units.csv"), rows).unwrap();
     let message = desk.refused("check");
@@ -422,7 +423,7 @@ fn wait(mut child: Child) -> Option<i32> {
         if let Some(status) = child.try_wait().expect("a child") {
             return status.code();
         }
-        if begun.elapsed() > Duration::from_secs(60) {
+        if begun.elapsed() > Duration::from_mins(1) {
             child.kill().expect("killed");
             panic!("the program did not stop");
         }
