@@ -163,7 +163,13 @@ impl Sweep {
         };
         let mut text = sweep_tables(&axes, &scored, look);
         if search.is_some() {
-            text.push_str(&break_sentences(&axes, &label, first, &brackets));
+            text.push_str(&break_sentences(
+                &axes,
+                &label,
+                first,
+                &brackets,
+                output.width,
+            ));
         }
         let _ = writeln!(
             text,

@@ -2,12 +2,11 @@
 
 use super::csv_files::{CsvError, write};
 use super::number;
-use super::text::bold;
+use super::text::{bold, paragraph};
 use super::text_table::{Align, Column, TextTable, measure_cell};
 use super::{AxisValue, Look, Scored, SweepPoint};
 use crate::planning::BreakBracket;
 use crate::score::Measure;
-use std::fmt::Write as _;
 
 /// Coverage of every method along the sweep, one block per truth × estimand.
 #[must_use]
@@ -65,6 +64,7 @@ pub fn break_sentences(
     method: &str,
     scored: &Scored,
     brackets: &[BreakBracket],
+    width: usize,
 ) -> String {
     let bound = 100.0 * (scored.level - scored.tolerance);
     let axis = axes.first().map_or("", String::as_str);
@@ -107,7 +107,7 @@ pub fn break_sentences(
             ),
             (None, None) => "no value could be judged".to_owned(),
         };
-        let _ = writeln!(out, "  {place}{sentence}.");
+        out.push_str(&paragraph(&format!("{place}{sentence}."), width));
     }
     out
 }

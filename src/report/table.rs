@@ -117,6 +117,11 @@ fn block(scored: &Scored, measures: &TruthMeasures, estimand: usize, look: Look)
         number::grouped(measures.trials),
     );
     let cells = cells_of(measures, estimand);
+    let facts = if all_answered(&cells) {
+        format!("{facts} Every method answered in every trial.")
+    } else {
+        facts
+    };
     let mut text = String::new();
     for line in paragraph(&title, look.width).lines() {
         text.push_str(&bold(line, look.ansi));
@@ -127,6 +132,10 @@ fn block(scored: &Scored, measures: &TruthMeasures, estimand: usize, look: Look)
     text.push_str(&table(scored, &cells, null_holds).render(look.width, look.ansi));
     text.push_str(&reasons(scored, measures.trials, &cells, look));
     text
+}
+
+fn all_answered(cells: &[&CellMeasures]) -> bool {
+    cells.iter().all(|cell| cell.failures.is_empty())
 }
 
 fn table(scored: &Scored, cells: &[&CellMeasures], null_holds: bool) -> TextTable {
@@ -140,7 +149,11 @@ fn table(scored: &Scored, cells: &[&CellMeasures], null_holds: bool) -> TextTabl
         measure: Measure::NoAnswer,
         scale: 100.0,
     };
-    let shown: Vec<&Shown> = BEFORE_TEST.iter().chain([&test, &missing]).collect();
+    let shown: Vec<&Shown> = BEFORE_TEST
+        .iter()
+        .chain([&test])
+        .chain((!all_answered(cells)).then_some(&missing))
+        .collect();
     let columns = shown
         .iter()
         .map(|shown| Column {
