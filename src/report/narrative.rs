@@ -1,5 +1,6 @@
 //! A plan in plain words, batch by batch.
 
+use super::number::short;
 use crate::plan::{
     Allocation, AllocationRule, Batch, BatchWeights, CorrelationFactor, DebiasingPenalty, Draw,
     Drift, Estimand, Marginal, Method, MethodKind, Noise, NoiseLaw, OutcomeVariance, Plan, Score,
@@ -198,22 +199,15 @@ fn describe_marginal(marginal: &Marginal) -> String {
 }
 
 fn describe_batch(plan: &Plan, index: usize, batch: &Batch) -> String {
-    let delay = plan
-        .truths
-        .iter()
-        .map(|truth| truth.delay)
-        .max()
-        .unwrap_or(0);
-    let seen = index.saturating_sub(delay);
     let looks_back = batch.select.iter().any(|part| part.rule.fit().is_some())
         || batch
             .allocate
             .as_ref()
             .is_some_and(|allocation| allocation.rule.looks_back());
-    let mut words = match seen {
-        _ if !looks_back => "No outcome is looked at.".to_owned(),
-        1 => "The outcomes of batch 1 are looked at.".to_owned(),
-        _ => format!("The outcomes of batches 1 to {seen} are looked at."),
+    let mut words = if looks_back {
+        describe_look(plan, index)
+    } else {
+        "No outcome is looked at.".to_owned()
     };
     for part in &batch.select {
         words.push(' ');
@@ -224,6 +218,33 @@ fn describe_batch(plan: &Plan, index: usize, batch: &Batch) -> String {
         words.push_str(&describe_allocation(plan, allocation));
     }
     words
+}
+
+/// Which outcomes a rule for the batch sees, and under which truths it sees fewer.
+fn describe_look(plan: &Plan, index: usize) -> String {
+    let seen = |delay: usize| match index.saturating_sub(delay) {
+        0 => "no batch".to_owned(),
+        1 => "batch 1".to_owned(),
+        last => format!("batches 1 to {last}"),
+    };
+    let delay = plan
+        .truths
+        .iter()
+        .map(|truth| truth.delay)
+        .min()
+        .unwrap_or(0);
+    let late: Vec<String> = plan
+        .truths
+        .iter()
+        .filter(|truth| truth.delay > delay)
+        .map(|truth| format!("of {} under {}", seen(truth.delay), truth.name))
+        .collect();
+    let exceptions = if late.is_empty() {
+        String::new()
+    } else {
+        format!(" ({})", late.join(", "))
+    };
+    format!("The outcomes of {} are looked at{exceptions}.", seen(delay))
 }
 
 fn describe_part(plan: &Plan, part: &SelectPart) -> String {
@@ -369,7 +390,7 @@ fn describe_truth(plan: &Plan, truth: &Truth) -> String {
     for (column, slope) in plan.population.columns.iter().zip(&truth.slopes) {
         // A long list of slopes says less than their number and size.
         if nonzero <= 6 && *slope != 0.0 {
-            named.push(format!("{column} {slope:.4}"));
+            named.push(format!("{column} {}", short(*slope)));
         }
     }
     if nonzero > 6 {
@@ -379,7 +400,7 @@ fn describe_truth(plan: &Plan, truth: &Truth) -> String {
             .map(|slope| slope * slope)
             .sum::<f64>()
             .sqrt();
-        named.push(format!("{nonzero} non-zero slopes of norm {norm:.4}"));
+        named.push(format!("{nonzero} non-zero slopes of norm {}", short(norm)));
     }
     let interactions = truth
         .interactions
@@ -451,7 +472,7 @@ fn describe_estimand(plan: &Plan, estimand: &Estimand) -> String {
             .iter()
             .zip(&plan.analysis.names)
             .filter(|(weight, _)| **weight != 0.0)
-            .map(|(weight, name)| format!("{weight:.4} × {name}"))
+            .map(|(weight, name)| format!("{} × {name}", short(*weight)))
             .collect();
         list(&terms)
     } else {
