@@ -10,7 +10,8 @@ pub(super) struct RidgeScratch {
     coefficients: Vec<f64>,
     direction: Vec<f64>,
     image: Vec<f64>,
-    unit: Vec<f64>,
+    diagonal: Vec<f64>,
+    tile: Vec<f64>,
 }
 
 /// Ridge regression, interval as if it were unbiased.
@@ -46,8 +47,13 @@ pub(super) fn estimate(bench: &mut Workbench, estimand: usize, penalty: f64) -> 
     kernels.solve_lower(&scratch.factor, p, coefficients);
     kernels.solve_lower_transposed(&scratch.factor, p, coefficients);
     // tr H = p - λ Σ_j [(S+Λ)^{-1}]_jj over the penalised coefficients.
-    let penalised = (0..p).filter(|&index| Some(index) != bench.intercept);
-    let trace = kernels.inverse_diagonal_sum(&scratch.factor, p, penalised, &mut scratch.unit);
+    scratch.diagonal.clear();
+    scratch.diagonal.resize(p, 0.0);
+    kernels.inverse_diagonal(&scratch.factor, &mut scratch.tile, &mut scratch.diagonal);
+    if let Some(intercept) = bench.intercept {
+        scratch.diagonal[intercept] = 0.0;
+    }
+    let trace: f64 = scratch.diagonal.iter().sum();
     let degrees = units as f64 - (p as f64 - penalty * trace);
     if degrees <= 0.0 {
         return Err(NoAnswer::NoResidualDegrees);

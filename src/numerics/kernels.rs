@@ -213,38 +213,17 @@ impl Kernels {
         }
     }
 
-    /// Sum of squares of the columns `columns` of the inverse of a Cholesky factor, which are the
-    /// diagonal entries of the inverse of the matrix it came from. `scratch` holds one column.
-    #[must_use]
-    pub fn inverse_diagonal_sum(
-        self,
-        factor: &[f64],
-        p: usize,
-        columns: impl Iterator<Item = usize>,
-        scratch: &mut Vec<f64>,
-    ) -> f64 {
-        scratch.clear();
-        scratch.resize(p, 0.0);
-        self.run(
-            #[inline(always)]
-            || {
-                let mut total = 0.0;
-                for first in columns {
-                    // Column `first` of the inverse is zero above its diagonal.
-                    let b = &mut scratch[first..];
-                    b.fill(0.0);
-                    b[0] = 1.0;
-                    for j in first..p {
-                        let column = &factor[j * p + j..(j + 1) * p];
-                        let value = b[j - first] / column[0];
-                        b[j - first] = value;
-                        total += value * value;
-                        add_scaled(-value, &column[1..], &mut b[j - first + 1..]);
-                    }
-                }
-                total
-            },
-        )
+    /// Diagonal of the inverse of the matrix whose Cholesky factor is given, one entry per
+    /// coefficient. `tile` is scratch space that grows as needed.
+    pub fn inverse_diagonal(self, factor: &[f64], tile: &mut Vec<f64>, out: &mut [f64]) {
+        if tile.len() < out.len() * TILE {
+            tile.resize(out.len() * TILE, 0.0);
+        }
+        let diagonal = InverseDiagonal { factor, tile, out };
+        match self.arch {
+            Some(arch) => arch.dispatch(diagonal),
+            None => diagonal.with_simd(pulp::Scalar::new()),
+        }
     }
 }
 
@@ -352,6 +331,41 @@ fn block_products<S: Simd>(simd: S, a: [&[f64]; TALL], b: [&[f64]; WIDE]) -> [[f
 /// Rows whitened together: four 256-bit registers of eight rows each.
 const TILE: usize = 32;
 
+/// Whitens the columns `first ..` of a tile in place (forward substitution with the factor) and
+/// returns the squared length of each row. The columns before `first` must be zero.
+#[inline(always)]
+fn whiten_tile<S: Simd>(
+    simd: S,
+    factor: &[f64],
+    first: usize,
+    tile: &mut [[f64; TILE]],
+) -> [f64; TILE] {
+    let p = tile.len();
+    let vectors = TILE / S::F64_LANES;
+    let mut squares = [0.0; TILE];
+    for j in first..p {
+        let (done, rest) = tile.split_at_mut(j);
+        let mut sums = [simd.splat_f64s(0.0); TILE];
+        let (own, _) = S::as_mut_simd_f64s(&mut rest[0]);
+        sums[..vectors].copy_from_slice(&own[..vectors]);
+        for (k, column) in done.iter().enumerate().skip(first) {
+            let weight = simd.splat_f64s(factor[k * p + j]);
+            let (column, _) = S::as_simd_f64s(column);
+            for (sum, value) in sums.iter_mut().zip(column).take(vectors) {
+                *sum = simd.sub_f64s(*sum, simd.mul_f64s(weight, *value));
+            }
+        }
+        let scale = simd.splat_f64s(1.0 / factor[j * p + j]);
+        let (square, _) = S::as_mut_simd_f64s(&mut squares);
+        for vector in 0..vectors {
+            own[vector] = simd.mul_f64s(sums[vector], scale);
+            let product = simd.mul_f64s(own[vector], own[vector]);
+            square[vector] = simd.add_f64s(square[vector], product);
+        }
+    }
+    squares
+}
+
 /// Squared lengths of the whitened rows, tile by tile, so that a tile's columns stay in the
 /// first-level cache.
 struct Leverages<'a, 'b> {
@@ -374,35 +388,40 @@ impl WithSimd for Leverages<'_, '_> {
             tile,
             out,
         } = self;
-        let p = used.len();
-        let vectors = TILE / S::F64_LANES;
-        let (tile, _) = tile[..p * TILE].as_chunks_mut::<TILE>();
+        let (tile, _) = tile[..used.len() * TILE].as_chunks_mut::<TILE>();
         for start in (0..x.rows()).step_by(TILE) {
             let count = TILE.min(x.rows() - start);
-            let mut squares = [0.0; TILE];
-            for j in 0..p {
-                let (done, rest) = tile.split_at_mut(j);
-                let target = &mut rest[0];
-                target[..count].copy_from_slice(&x.column(used[j])[start..start + count]);
-                let mut sums = [simd.splat_f64s(0.0); TILE];
-                let (own, _) = S::as_mut_simd_f64s(target);
-                sums[..vectors].copy_from_slice(&own[..vectors]);
-                for (k, column) in done.iter().enumerate() {
-                    let weight = simd.splat_f64s(factor[k * p + j]);
-                    let (column, _) = S::as_simd_f64s(column);
-                    for vector in 0..vectors {
-                        let product = simd.mul_f64s(weight, column[vector]);
-                        sums[vector] = simd.sub_f64s(sums[vector], product);
-                    }
-                }
-                let scale = simd.splat_f64s(1.0 / factor[j * p + j]);
-                let (square, _) = S::as_mut_simd_f64s(&mut squares);
-                for vector in 0..vectors {
-                    own[vector] = simd.mul_f64s(sums[vector], scale);
-                    let product = simd.mul_f64s(own[vector], own[vector]);
-                    square[vector] = simd.add_f64s(square[vector], product);
-                }
+            for (target, &column) in tile.iter_mut().zip(used) {
+                target[..count].copy_from_slice(&x.column(column)[start..start + count]);
             }
+            let squares = whiten_tile(simd, factor, 0, tile);
+            out[start..start + count].copy_from_slice(&squares[..count]);
+        }
+    }
+}
+
+/// Squared lengths of the columns of the inverse factor: whitened unit vectors, tile by tile.
+struct InverseDiagonal<'b> {
+    factor: &'b [f64],
+    tile: &'b mut [f64],
+    out: &'b mut [f64],
+}
+
+impl WithSimd for InverseDiagonal<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn with_simd<S: Simd>(self, simd: S) {
+        let Self { factor, tile, out } = self;
+        let p = out.len();
+        let (tile, _) = tile[..p * TILE].as_chunks_mut::<TILE>();
+        for start in (0..p).step_by(TILE) {
+            let count = TILE.min(p - start);
+            tile.as_flattened_mut().fill(0.0);
+            for offset in 0..count {
+                tile[start + offset][offset] = 1.0;
+            }
+            let squares = whiten_tile(simd, factor, start, tile);
             out[start..start + count].copy_from_slice(&squares[..count]);
         }
     }
@@ -535,10 +554,12 @@ mod tests {
                 kernels.leverages(view, &used, &factor, &mut Vec::new(), &mut leverages);
                 let trace: f64 = leverages.iter().sum();
                 prop_assert!((trace - p as f64).abs() < 1e-8 * p as f64, "leverages sum to p");
-                let diagonal =
-                    kernels.inverse_diagonal_sum(&factor, p, 0..p, &mut Vec::new());
+                let mut diagonal = vec![0.0; p];
+                kernels.inverse_diagonal(&factor, &mut Vec::new(), &mut diagonal);
                 let inverse = (reference.transpose() * &reference).try_inverse().unwrap();
-                prop_assert!((diagonal / inverse.trace() - 1.0).abs() < 1e-8);
+                for (found, expected) in diagonal.iter().zip(inverse.diagonal().iter()) {
+                    prop_assert!((found / expected - 1.0).abs() < 1e-8);
+                }
                 let mut fitted = vec![0.0; rows];
                 kernels.add_combination(view, &used, &solution, &mut fitted);
                 let direct = &reference * DVector::from_column_slice(&solution);
@@ -546,7 +567,7 @@ mod tests {
                     prop_assert!((a - b).abs() <= 1e-10 * (1.0 + b.abs()));
                 }
                 bits.push(
-                    [gram, factor, solution, leverages, vec![diagonal], fitted]
+                    [gram, factor, solution, leverages, diagonal, fitted]
                         .concat().iter().map(|v| v.to_bits()).collect(),
                 );
             }

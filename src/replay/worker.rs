@@ -144,6 +144,11 @@ impl<'a> Worker<'a> {
             let target = self
                 .trial
                 .column_mut(design.first_covariate() + column, rows.clone());
+            // Whoever enrols every candidate enrols them in order.
+            if self.chosen.len() == source.len() {
+                target.copy_from_slice(source);
+                continue;
+            }
             for (value, choice) in target.iter_mut().zip(&self.chosen) {
                 *value = source[choice.candidate];
             }
