@@ -1,6 +1,7 @@
 //! The command line: one file a verb, arguments to library call to exit code. No statistics here.
 
 mod check;
+mod options;
 mod output;
 mod replay;
 mod sweep;
@@ -9,7 +10,7 @@ use crate::plan::{self, Plan};
 use crate::scenario::{Diagnostics, Scenario};
 use clap::{Parser, Subcommand};
 use output::Output;
-use std::path::{Path, PathBuf};
+use std::path::Path;
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
@@ -123,27 +124,6 @@ fn read_scenario(
 /// A failure of the run in the words of its error.
 fn run_failure(error: impl std::fmt::Display) -> Failure {
     Failure::Run(format!("error: {error}"))
-}
-
-/// The result folder asked for, or one named after the scenario.
-fn result_folder(asked: Option<&Path>, scenario: &Path) -> PathBuf {
-    asked.map_or_else(
-        || {
-            let name = scenario
-                .file_stem()
-                .map_or("scenario".into(), |stem| stem.to_string_lossy());
-            PathBuf::from(format!("{name}-result"))
-        },
-        Path::to_path_buf,
-    )
-}
-
-/// Threads that a number of worker threads stands for.
-fn thread_count(asked: usize) -> usize {
-    if asked > 0 {
-        return asked;
-    }
-    std::thread::available_parallelism().map_or(1, usize::from)
 }
 
 /// The time, UTC.

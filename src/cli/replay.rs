@@ -1,53 +1,29 @@
 //! `windage replay`: simulate, score, print the tables, write the result folder.
 
+use super::options::RunOptions;
 use super::output::Output;
-use super::{Ending, Failure, interrupt_flag, read_scenario, run_failure, started_now};
+use super::{Ending, Failure, interrupt_flag, run_failure, started_now};
 use crate::replay::{ReplayOptions, Study, TrialSink, replay};
 use crate::report::{
-    Clock, Look, Machine, ResultFolder, RunRecord, Scored, TrialsFile, replay_figures,
-    replay_tables, summary_json, write_result,
+    Clock, Look, Machine, RunRecord, Scored, TrialsFile, replay_figures, replay_tables,
+    summary_json, write_result,
 };
 use crate::score::{BlockRecord, Labels, RequirementOutcome, evaluate};
 use std::fmt::Write as _;
 use std::fs::File;
-use std::path::PathBuf;
 use std::time::Instant;
 
 /// Arguments of `replay`.
-#[allow(clippy::struct_excessive_bools)] // one per flag
 #[derive(Debug, clap::Args)]
 pub(super) struct Replay {
-    /// Scenario file.
-    scenario: PathBuf,
-    /// Result folder; by default `NAME-result` beside where the program runs.
-    #[arg(short, long, value_name = "FOLDER")]
-    output: Option<PathBuf>,
-    /// Replace a result folder that exists.
-    #[arg(short, long)]
-    force: bool,
-    /// Trials per truth, instead of the scenario's number.
-    #[arg(short, long, value_name = "NUMBER")]
-    trials: Option<u64>,
-    /// Seed, instead of the scenario's.
-    #[arg(long, value_name = "NUMBER")]
-    seed: Option<u64>,
-    /// Worker threads; one per core by default. The result does not depend on it.
-    #[arg(
-        long,
-        value_name = "NUMBER",
-        default_value_t = 0,
-        hide_default_value = true
-    )]
-    threads: usize,
+    #[command(flatten)]
+    run: RunOptions,
     /// Write every trial's estimates to `trials.parquet`.
     #[arg(long)]
     keep_trials: bool,
     /// Print the results as JSON instead of tables.
     #[arg(long)]
     json: bool,
-    /// Show no progress.
-    #[arg(short, long)]
-    quiet: bool,
 }
 
 /// Keeps every trial in a Parquet file.
@@ -66,12 +42,11 @@ impl TrialSink for KeepTrials {
 
 impl Replay {
     pub(super) fn run(self, output: &Output) -> Result<Ending, Failure> {
-        let (scenario, plan) = read_scenario(&self.scenario, self.trials, self.seed)?;
-        let target = super::result_folder(self.output.as_deref(), &self.scenario);
-        let folder = ResultFolder::begin(&target, self.force).map_err(run_failure)?;
+        let (scenario, plan) = self.run.read()?;
+        let folder = self.run.folder()?;
         let interrupt = interrupt_flag()?;
         let (started, begun) = (started_now(), Instant::now());
-        let mut progress = output.progress(self.quiet);
+        let mut progress = output.progress(self.run.quiet);
         progress.note("preparing");
         let study = Study::prepare(&plan);
         let true_values = study.true_value_table();
@@ -89,7 +64,7 @@ impl Replay {
         let results = replay(
             &study,
             &mut ReplayOptions {
-                threads: self.threads,
+                threads: self.run.threads,
                 interrupt: &interrupt,
                 progress: &mut |state| progress.show("", state),
                 sink: keep.as_mut().map(|keep| keep as &mut dyn TrialSink),
@@ -118,7 +93,7 @@ impl Replay {
             precision.trials,
             None,
             clock,
-            Machine::current(super::thread_count(self.threads)),
+            Machine::current(self.run.thread_count()),
         );
         let figures = replay_figures(&scored, &distributions);
         write_result(&folder, scenario.text(), &record, &scored, &figures).map_err(run_failure)?;

@@ -1,7 +1,8 @@
 //! `windage sweep`: replay over a grid of scenario values, find where a method breaks.
 
+use super::options::RunOptions;
 use super::output::{Output, ProgressLine};
-use super::{Ending, Failure, interrupt_flag, read_scenario, run_failure, started_now};
+use super::{Ending, Failure, interrupt_flag, run_failure, started_now};
 use crate::plan::Plan;
 use crate::planning::{BreakBracket, GridPoint, Search, find_breaks, grid, point};
 use crate::replay::{ReplayOptions, Study, replay};
@@ -12,38 +13,14 @@ use crate::report::{
 };
 use crate::score::Measure;
 use std::fmt::Write as _;
-use std::path::PathBuf;
 use std::sync::atomic::AtomicBool;
 use std::time::Instant;
 
 /// Arguments of `sweep`.
 #[derive(Debug, clap::Args)]
 pub(super) struct Sweep {
-    /// Scenario file with a `[sweep]` section.
-    scenario: PathBuf,
-    /// Result folder; by default `NAME-result` beside where the program runs.
-    #[arg(short, long, value_name = "FOLDER")]
-    output: Option<PathBuf>,
-    /// Replace a result folder that exists.
-    #[arg(short, long)]
-    force: bool,
-    /// Trials per truth and point, instead of the scenario's number.
-    #[arg(short, long, value_name = "NUMBER")]
-    trials: Option<u64>,
-    /// Seed, instead of the scenario's.
-    #[arg(long, value_name = "NUMBER")]
-    seed: Option<u64>,
-    /// Worker threads; one per core by default. The result does not depend on it.
-    #[arg(
-        long,
-        value_name = "NUMBER",
-        default_value_t = 0,
-        hide_default_value = true
-    )]
-    threads: usize,
-    /// Show no progress.
-    #[arg(short, long)]
-    quiet: bool,
+    #[command(flatten)]
+    run: RunOptions,
 }
 
 /// What replays the points of a sweep.
@@ -82,24 +59,23 @@ impl Runner<'_> {
 
 impl Sweep {
     pub(super) fn run(self, output: &Output) -> Result<Ending, Failure> {
-        let (scenario, _) = read_scenario(&self.scenario, self.trials, self.seed)?;
+        let (scenario, _) = self.run.read()?;
         let Some(sweep) = scenario.sweep() else {
             return Err(Failure::Usage(format!(
                 "error: {} has no [sweep] section: add one with axes = [{{ path = \"...\", \
                  values = [...] }}]",
-                self.scenario.display()
+                self.run.scenario.display()
             )));
         };
         let points = grid(&scenario, sweep)?;
-        let target = super::result_folder(self.output.as_deref(), &self.scenario);
-        let folder = ResultFolder::begin(&target, self.force).map_err(run_failure)?;
+        let folder = self.run.folder()?;
         let interrupt = interrupt_flag()?;
         let (started, begun) = (started_now(), Instant::now());
         let axes: Vec<String> = sweep.axes.iter().map(|axis| axis.path.clone()).collect();
         let mut runner = Runner {
-            threads: self.threads,
+            threads: self.run.threads,
             interrupt: &interrupt,
-            progress: output.progress(self.quiet),
+            progress: output.progress(self.run.quiet),
         };
         let search = sweep.break_point.as_ref().and_then(|wanted| {
             let plan = &points.first()?.plan;
@@ -145,7 +121,7 @@ impl Sweep {
             precision.trials,
             None,
             clock,
-            Machine::current(super::thread_count(self.threads)),
+            Machine::current(self.run.thread_count()),
         );
         write_files(
             &folder,
