@@ -125,6 +125,7 @@ pub(super) fn scored(methods: usize) -> Scored {
         aim: "Does steering season 2 spoil the interval?".to_owned(),
         level: 0.95,
         tolerance: 0.01,
+        confidence: 0.95,
         reference: 0,
         truths: vec![
             "no effect".to_owned(),

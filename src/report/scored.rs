@@ -18,6 +18,8 @@ pub struct Scored {
     pub level: f64,
     /// Coverage may fall short of the level by this much and still be called honest.
     pub tolerance: f64,
+    /// Simultaneous confidence of all verdicts.
+    pub confidence: f64,
     /// Index of the method whose mean width is the unit of price.
     pub reference: usize,
     /// Name of each truth.
@@ -51,6 +53,7 @@ impl Scored {
             aim: plan.aim.clone(),
             level: plan.level,
             tolerance: plan.verdicts.tolerance,
+            confidence: plan.verdicts.confidence,
             reference: plan.verdicts.reference,
             truths: plan.truths.iter().map(|truth| truth.name.clone()).collect(),
             estimands: plan

@@ -32,10 +32,12 @@ pub fn verdict_tables(scored: &Scored, look: Look) -> String {
         }
         let meaning = format!(
             "Honest: coverage is at least {} (level {} less tolerance {}), beyond Monte Carlo doubt, \
-             in every truth of the scenario.",
+             in every truth of the scenario. All verdicts of the scenario hold together with \
+             confidence {} (exact binomial tests, adjusted by Holm's method).",
             number::per_cent(scored.level - scored.tolerance),
             number::per_cent(scored.level),
             number::per_cent(scored.tolerance),
+            number::per_cent(scored.confidence),
         );
         text.push_str(&paragraph(&meaning, look.width));
         text.push('\n');
