@@ -193,16 +193,18 @@ fn enrichment_bias_agrees_with_an_independent_simulation() {
 
 /// Batchwise-studentised least squares is exactly t under normal errors and any rule (Zhang, Janson
 /// & Murphy 2020, with the pooled within-batch variance): 95 % coverage under greedy selection up
-/// to p/n = 0.25, where least squares covers about 75 %. First and last batch alone are exact too.
+/// to p/n = 0.25, where least squares covers about 75 %. First and last batch alone are exact too, and
+/// so is the predictable pivot (own derivation).
 #[test]
 fn exact_methods_cover_under_greedy_selection() {
     let methods = "[[method]]\nkind = \"least-squares\"\n[[method]]\nkind = \"batch-combined\"\n\
                    [[method]]\nkind = \"batch-combined\"\nweights = \"equal\"\nlabel = \"equal\"\n\
                    [[method]]\nkind = \"batch-combined\"\nweights = \"planned\"\nlabel = \"planned\"\n\
-                   [[method]]\nkind = \"first-batch\"\n[[method]]\nkind = \"last-batch\"\n";
+                   [[method]]\nkind = \"first-batch\"\n[[method]]\nkind = \"last-batch\"\n\
+                   [[method]]\nkind = \"predictable-pivot\"\n";
     for p in [4, 50] {
         let result = &results(&enrichment(p, 100, 1.0, 0.05, 20_000, methods))[0];
-        for cell in 1..6 {
+        for cell in 1..7 {
             let (covered, mcse) = value(result, cell, Measure::Coverage);
             assert_within_mc(&format!("p = {p}, method {cell}"), covered, 0.95, mcse, Z);
         }

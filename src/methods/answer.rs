@@ -51,16 +51,19 @@ pub enum NoAnswer {
     EmptyBatch,
     /// A standard error came out as zero or not finite.
     DegenerateVariance,
+    /// Predictable weights could not be closed on the contrast within their budget.
+    BudgetNotClosed,
 }
 
 impl NoAnswer {
     /// Every reason, in report order.
-    pub const ALL: [Self; 5] = [
+    pub const ALL: [Self; 6] = [
         Self::RankDeficient,
         Self::BatchRankDeficient,
         Self::NoResidualDegrees,
         Self::EmptyBatch,
         Self::DegenerateVariance,
+        Self::BudgetNotClosed,
     ];
 
     /// Key used in result files.
@@ -72,6 +75,7 @@ impl NoAnswer {
             Self::NoResidualDegrees => "no-residual-degrees",
             Self::EmptyBatch => "empty-batch",
             Self::DegenerateVariance => "degenerate-variance",
+            Self::BudgetNotClosed => "budget-not-closed",
         }
     }
 }
@@ -84,6 +88,7 @@ impl fmt::Display for NoAnswer {
             Self::NoResidualDegrees => "no residual degree of freedom is left",
             Self::EmptyBatch => "a batch enrolled nobody",
             Self::DegenerateVariance => "the standard error is zero or not finite",
+            Self::BudgetNotClosed => "the predictable weights could not be closed on the contrast",
         })
     }
 }

@@ -22,6 +22,12 @@ impl CriticalValues {
         }
     }
 
+    /// Chance of missing that the level allows, `1 - level`.
+    #[must_use]
+    pub fn miss(&self) -> f64 {
+        2.0 * (1.0 - self.upper)
+    }
+
     /// Standard normal critical value.
     #[must_use]
     pub fn normal(&self) -> f64 {

@@ -169,6 +169,17 @@ impl Fit {
         kernels.dot(contrast, &self.coefficients)
     }
 
+    /// A vector `v` with `v'v = c'(X'X)^{-1}c`, linear in `c`.
+    pub(super) fn whiten_contrast(&self, contrast: &[f64], out: &mut Vec<f64>, kernels: Kernels) {
+        out.clear();
+        if let State::Orthogonal(fit) = &self.state {
+            out.extend(fit.rotated_contrast(contrast));
+            return;
+        }
+        out.extend_from_slice(contrast);
+        kernels.solve_lower(&self.factor, self.p, out);
+    }
+
     /// `c'(X'X)^{-1}c`.
     pub(super) fn contrast_variance(
         &self,

@@ -2,12 +2,16 @@
 //! why they cannot.
 
 mod answer;
+mod anticipated_decorrelation;
+mod anticipation;
 mod batch_combined;
 mod critical;
 mod fit;
 mod inverse_variance;
 mod least_squares;
+mod predictable_pivot;
 mod ridge;
+mod self_normalised;
 mod single_batch;
 mod tuned;
 mod w_decorrelation;
@@ -19,6 +23,7 @@ pub use fit::Fit;
 pub use tuned::{Needs, TunedMethod};
 pub use workbench::Workbench;
 
+use crate::plan::DebiasingSteps;
 use crate::trial::Trial;
 use ridge::RidgeScratch;
 
@@ -46,8 +51,22 @@ pub fn estimate(
             batch_combined::estimate(bench, estimand, &weights[estimand])
         }
         TunedMethod::InverseVariance => inverse_variance::estimate(bench, estimand),
-        TunedMethod::WDecorrelation { penalty } => {
-            w_decorrelation::estimate(bench, estimand, *penalty)
+        TunedMethod::WDecorrelation {
+            penalty,
+            steps,
+            error,
+        } => match steps {
+            DebiasingSteps::Units => w_decorrelation::by_units(bench, estimand, *penalty, *error),
+            DebiasingSteps::Batches => {
+                w_decorrelation::by_batches(bench, estimand, *penalty, *error)
+            }
+        },
+        TunedMethod::AnticipatedDecorrelation => {
+            anticipated_decorrelation::estimate(bench, estimand)
+        }
+        TunedMethod::PredictablePivot => predictable_pivot::estimate(bench, estimand),
+        TunedMethod::SelfNormalised { penalty, bound } => {
+            self_normalised::estimate(bench, estimand, *penalty, *bound)
         }
     }
 }

@@ -1,6 +1,6 @@
 //! Methods with their tuning constants fixed, as they stand before the first scored trial.
 
-use crate::plan::VarianceForm;
+use crate::plan::{DebiasingError, DebiasingSteps, VarianceForm};
 
 /// A method ready to be applied.
 #[derive(Debug, Clone, PartialEq)]
@@ -30,6 +30,21 @@ pub enum TunedMethod {
     WDecorrelation {
         /// The tuning constant λ.
         penalty: f64,
+        /// Whether the weights follow unit by unit or batch by batch.
+        steps: DebiasingSteps,
+        /// What the standard error counts.
+        error: DebiasingError,
+    },
+    /// Decorrelation that anticipates the information of later batches.
+    AnticipatedDecorrelation,
+    /// Predictable weights of one total budget that end at the contrast.
+    PredictablePivot,
+    /// Any-time valid ellipsoid projected on the contrast.
+    SelfNormalised {
+        /// Regularisation λ.
+        penalty: f64,
+        /// Bound on the Euclidean norm of the coefficients.
+        bound: f64,
     },
 }
 
@@ -49,6 +64,8 @@ pub struct Needs {
     pub last_batch: bool,
     /// The least-squares fit of every batch.
     pub every_batch: bool,
+    /// Gram matrix and cross-products of every batch.
+    pub batch_sums: bool,
     /// Unit rows in time order.
     pub rows_in_order: bool,
 }
@@ -64,6 +81,7 @@ impl Needs {
             first_batch: self.first_batch || other.first_batch,
             last_batch: self.last_batch || other.last_batch,
             every_batch: self.every_batch || other.every_batch,
+            batch_sums: self.batch_sums || other.batch_sums,
             rows_in_order: self.rows_in_order || other.rows_in_order,
         }
     }
@@ -81,8 +99,8 @@ impl TunedMethod {
                 leverages: matches!(variance, VarianceForm::Hc2 | VarianceForm::Hc3),
                 ..nothing
             },
-            // The ridge solves its own equations, from the pooled sums that come with the fit.
-            Self::Ridge { .. } => Needs {
+            // They solve equations of their own, from the pooled sums that come with the fit.
+            Self::Ridge { .. } | Self::SelfNormalised { .. } => Needs {
                 pooled_fit: true,
                 ..nothing
             },
@@ -98,10 +116,32 @@ impl TunedMethod {
                 every_batch: true,
                 ..nothing
             },
-            Self::WDecorrelation { .. } => Needs {
+            Self::WDecorrelation {
+                steps: DebiasingSteps::Units,
+                ..
+            } => Needs {
                 pooled_fit: true,
                 residuals: true,
                 rows_in_order: true,
+                ..nothing
+            },
+            Self::WDecorrelation {
+                steps: DebiasingSteps::Batches,
+                ..
+            } => Needs {
+                pooled_fit: true,
+                batch_sums: true,
+                ..nothing
+            },
+            Self::AnticipatedDecorrelation => Needs {
+                pooled_fit: true,
+                every_batch: true,
+                batch_sums: true,
+                ..nothing
+            },
+            Self::PredictablePivot => Needs {
+                every_batch: true,
+                batch_sums: true,
                 ..nothing
             },
         }

@@ -1,5 +1,6 @@
 //! What methods share in one trial: fits, residuals, leverages, scratch space.
 
+use super::anticipation::AnticipationScratch;
 use super::fit::{FitScratch, ModelRows};
 use super::{CriticalValues, Fit, Needs, NoAnswer, RidgeScratch};
 use crate::numerics::kernels::Kernels;
@@ -26,6 +27,10 @@ pub struct Workbench {
     pub(super) cross: Vec<f64>,
     pub(super) residuals: Vec<f64>,
     pub(super) leverages: Vec<f64>,
+    /// Gram matrix (`p × p`) and cross-products (`p`) of every batch, one after another.
+    pub(super) batch_grams: Vec<f64>,
+    pub(super) batch_crosses: Vec<f64>,
+    pub(super) anticipation: AnticipationScratch,
     /// Squared length of each row of the analysis design.
     pub(super) row_squares: Vec<f64>,
     /// Rows of the analysis design, row-major.
@@ -78,6 +83,9 @@ impl Workbench {
             cross: vec![0.0; p],
             residuals: Vec::new(),
             leverages: Vec::new(),
+            batch_grams: Vec::new(),
+            batch_crosses: Vec::new(),
+            anticipation: AnticipationScratch::default(),
             row_squares: Vec::new(),
             rows: Vec::new(),
             weights: Vec::new(),
@@ -184,8 +192,24 @@ impl Workbench {
                 kernels,
             );
         }
+        if self.needs.batch_sums {
+            self.fill_batch_sums(sums);
+        }
         if self.needs.rows_in_order {
             self.fill_rows(trial);
+        }
+    }
+
+    fn fill_batch_sums(&mut self, sums: &BatchSums) {
+        let p = self.stored.len();
+        self.batch_grams.resize(sums.batches() * p * p, 0.0);
+        self.batch_crosses.resize(sums.batches() * p, 0.0);
+        for batch in 0..sums.batches() {
+            sums.batch_only(batch).total(
+                &self.positions,
+                &mut self.batch_grams[batch * p * p..(batch + 1) * p * p],
+                &mut self.batch_crosses[batch * p..(batch + 1) * p],
+            );
         }
     }
 
@@ -231,6 +255,19 @@ impl Workbench {
             self.kernels,
             &mut self.weights,
         );
+    }
+
+    /// `‖a + XS^{-1}r‖²` from `‖a‖²` and the remainder `r = c - X'a`, which is
+    /// `‖a‖² + 2c'S^{-1}r - r'S^{-1}r`.
+    pub(super) fn with_remainder(&mut self, estimand: usize, squares: f64, rest: &[f64]) -> f64 {
+        let kernels = self.kernels;
+        let (whitened, vector) = (&mut self.scratch.residuals, &mut self.scratch.vector);
+        self.pooled.whiten_contrast(rest, vector, kernels);
+        whitened.clear();
+        whitened.extend_from_slice(vector);
+        self.pooled
+            .whiten_contrast(&self.contrasts[estimand], vector, kernels);
+        squares + 2.0 * kernels.dot(vector, whitened) - kernels.dot(whitened, whitened)
     }
 
     /// Within-batch variance pooled over batches, with its degrees of freedom.

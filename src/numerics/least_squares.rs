@@ -203,8 +203,10 @@ impl LeastSquares {
         solution
     }
 
-    /// `R^{-T}P'Dc`, the contrast in the orthonormal basis.
-    fn rotated_contrast(&self, contrast: &[f64]) -> Vec<f64> {
+    /// `R^{-T}P'Dc`, the contrast in the orthonormal basis: linear in `c`, and its squared length is
+    /// `c'(X'X)^{-1}c`.
+    #[must_use]
+    pub fn rotated_contrast(&self, contrast: &[f64]) -> Vec<f64> {
         let mut out = Vec::with_capacity(self.columns);
         for row in 0..self.columns {
             let original = self.pivots[row];

@@ -37,7 +37,40 @@ pub enum MethodKind {
     WDecorrelation {
         /// The tuning constant λ.
         penalty: DebiasingPenalty,
+        /// Whether the weights follow unit by unit or batch by batch.
+        steps: DebiasingSteps,
+        /// What the standard error counts.
+        error: DebiasingError,
     },
+    /// Decorrelation that anticipates the information of later batches.
+    AnticipatedDecorrelation,
+    /// Predictable weights of one total budget that end at the contrast: an exact pivot.
+    PredictablePivot,
+    /// Any-time valid ellipsoid projected on the contrast.
+    SelfNormalised {
+        /// Regularisation `λ > 0`.
+        penalty: f64,
+        /// Bound on the Euclidean norm of the coefficients.
+        bound: f64,
+    },
+}
+
+/// Steps in which the weights of W-decorrelation follow.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum DebiasingSteps {
+    /// Unit by unit, in time order.
+    Units,
+    /// Batch by batch, from the batches' sums.
+    Batches,
+}
+
+/// What the standard error of a debiased estimate counts.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum DebiasingError {
+    /// The weights of the correction alone, as published.
+    Weights,
+    /// The weights of the correction and of the remainder that least squares still carries.
+    RemainderAware,
 }
 
 /// Form of the variance estimate of least squares.

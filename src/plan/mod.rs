@@ -18,7 +18,10 @@ pub use batch::{
     SelectRule, Tail,
 };
 pub use estimand::Estimand;
-pub use method::{BatchWeights, DebiasingPenalty, Method, MethodKind, VarianceForm};
+pub use method::{
+    BatchWeights, DebiasingError, DebiasingPenalty, DebiasingSteps, Method, MethodKind,
+    VarianceForm,
+};
 pub use model::{Design, Model, Term};
 pub use population::{CorrelationFactor, LawPopulation, Marginal, Population, Roster, Source};
 pub use precision::{Bound, Precision, Requirement, Verdicts};

@@ -50,7 +50,8 @@ impl Study {
                 MethodKind::BatchCombined {
                     weights: BatchWeights::Planned
                 } | MethodKind::WDecorrelation {
-                    penalty: DebiasingPenalty::Replayed
+                    penalty: DebiasingPenalty::Replayed,
+                    ..
                 }
             )
         });
@@ -148,12 +149,24 @@ impl Study {
                 };
                 TunedMethod::BatchCombined { weights }
             }
-            MethodKind::WDecorrelation { penalty } => TunedMethod::WDecorrelation {
+            MethodKind::WDecorrelation {
+                penalty,
+                steps,
+                error,
+            } => TunedMethod::WDecorrelation {
                 penalty: match (penalty, &self.pilot) {
                     (DebiasingPenalty::Fixed(value), _) => *value,
                     (DebiasingPenalty::Replayed, Some(pilot)) => pilot.decorrelation_penalty,
                     (DebiasingPenalty::Replayed, None) => 1.0,
                 },
+                steps: *steps,
+                error: *error,
+            },
+            MethodKind::AnticipatedDecorrelation => TunedMethod::AnticipatedDecorrelation,
+            MethodKind::PredictablePivot => TunedMethod::PredictablePivot,
+            MethodKind::SelfNormalised { penalty, bound } => TunedMethod::SelfNormalised {
+                penalty: *penalty,
+                bound: *bound,
             },
         }
     }

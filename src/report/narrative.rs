@@ -2,9 +2,10 @@
 
 use super::number::short;
 use crate::plan::{
-    Allocation, AllocationRule, Batch, BatchWeights, CorrelationFactor, DebiasingPenalty, Draw,
-    Drift, Estimand, Marginal, Method, MethodKind, Noise, NoiseLaw, OutcomeVariance, Plan, Score,
-    ScoreFit, SelectPart, SelectRule, Source, Tail, Truth, VarianceForm,
+    Allocation, AllocationRule, Batch, BatchWeights, CorrelationFactor, DebiasingError,
+    DebiasingPenalty, DebiasingSteps, Draw, Drift, Estimand, Marginal, Method, MethodKind, Noise,
+    NoiseLaw, OutcomeVariance, Plan, Score, ScoreFit, SelectPart, SelectRule, Source, Tail, Truth,
+    VarianceForm,
 };
 use std::fmt::Write as _;
 
@@ -513,14 +514,35 @@ fn describe_method(method: &Method) -> String {
         MethodKind::InverseVariance => {
             "batch estimates weighted by their inverse variances".to_owned()
         }
-        MethodKind::WDecorrelation { penalty } => match penalty {
-            DebiasingPenalty::Replayed => {
-                "online debiasing, tuning constant from a pilot replay".to_owned()
-            }
-            DebiasingPenalty::Fixed(value) => {
-                format!("online debiasing, tuning constant {value}")
-            }
-        },
+        MethodKind::WDecorrelation {
+            penalty,
+            steps,
+            error,
+        } => {
+            let tuning = match penalty {
+                DebiasingPenalty::Replayed => "from a pilot replay".to_owned(),
+                DebiasingPenalty::Fixed(value) => value.to_string(),
+            };
+            let steps = match steps {
+                DebiasingSteps::Units => "unit by unit",
+                DebiasingSteps::Batches => "batch by batch",
+            };
+            let error = match error {
+                DebiasingError::Weights => "",
+                DebiasingError::RemainderAware => ", remainder-aware standard error",
+            };
+            format!("online debiasing {steps}, tuning constant {tuning}{error}")
+        }
+        MethodKind::AnticipatedDecorrelation => {
+            "online debiasing that anticipates the information of later batches".to_owned()
+        }
+        MethodKind::PredictablePivot => {
+            "predictable weights closed on the contrast, exact t interval".to_owned()
+        }
+        MethodKind::SelfNormalised { penalty, bound } => format!(
+            "any-time valid ellipsoid, regularisation {penalty}, coefficients of norm at most \
+             {bound}"
+        ),
     }
 }
 

@@ -242,6 +242,9 @@ static METHOD: Shape = Shape::Table(&[
     key("label", Shape::Name),
     key("variance", Shape::Name),
     key("penalty", Shape::Either(&[Shape::Number, Shape::Name])),
+    key("steps", Shape::Name),
+    key("error", Shape::Name),
+    key("bound", Shape::Number),
     key(
         "weights",
         Shape::Either(&[Shape::Name, Shape::List(&Shape::Number)]),

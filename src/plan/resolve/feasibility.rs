@@ -168,7 +168,9 @@ fn check_method(study: &Study<'_>, analysis: &Model, placed: &PlacedMethod, sink
     let size = |index: usize| study.batches[index].batch.size;
     let last = study.batches.len().saturating_sub(1);
     let short = match placed.method.kind {
-        MethodKind::LeastSquares { .. } | MethodKind::WDecorrelation { .. } => {
+        MethodKind::LeastSquares { .. }
+        | MethodKind::WDecorrelation { .. }
+        | MethodKind::SelfNormalised { .. } => {
             let units: usize = (0..=last).map(size).sum();
             (units <= coefficients).then(|| format!("the study has {units} units"))
         }
@@ -177,7 +179,10 @@ fn check_method(study: &Study<'_>, analysis: &Model, placed: &PlacedMethod, sink
         }
         MethodKind::LastBatch => (size(last) <= coefficients)
             .then(|| format!("batch {} has {} units", last + 1, size(last))),
-        MethodKind::BatchCombined { .. } | MethodKind::InverseVariance => (0..=last)
+        MethodKind::BatchCombined { .. }
+        | MethodKind::InverseVariance
+        | MethodKind::AnticipatedDecorrelation
+        | MethodKind::PredictablePivot => (0..=last)
             .find(|&index| size(index) <= coefficients)
             .map(|index| format!("batch {} has {} units", index + 1, size(index))),
         MethodKind::Ridge { .. } => None,

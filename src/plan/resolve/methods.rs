@@ -3,7 +3,10 @@
 use std::collections::HashMap;
 
 use super::marginals::positive;
-use crate::plan::{BatchWeights, DebiasingPenalty, Method, MethodKind, VarianceForm};
+use crate::plan::{
+    BatchWeights, DebiasingError, DebiasingPenalty, DebiasingSteps, Method, MethodKind,
+    VarianceForm,
+};
 use crate::scenario::{Content, Fields, Place, Sink, number};
 
 /// Ridge penalty where the scenario gives none.
@@ -27,9 +30,12 @@ enum Kind {
     BatchCombined,
     InverseVariance,
     WDecorrelation,
+    AnticipatedDecorrelation,
+    PredictablePivot,
+    SelfNormalised,
 }
 
-const KINDS: [(&str, Kind); 7] = [
+const KINDS: [(&str, Kind); 10] = [
     ("least-squares", Kind::LeastSquares),
     ("ridge", Kind::Ridge),
     ("first-batch", Kind::FirstBatch),
@@ -37,6 +43,9 @@ const KINDS: [(&str, Kind); 7] = [
     ("batch-combined", Kind::BatchCombined),
     ("inverse-variance", Kind::InverseVariance),
     ("w-decorrelation", Kind::WDecorrelation),
+    ("anticipated-decorrelation", Kind::AnticipatedDecorrelation),
+    ("predictable-pivot", Kind::PredictablePivot),
+    ("self-normalised", Kind::SelfNormalised),
 ];
 
 const VARIANCES: [(&str, VarianceForm); 5] = [
@@ -45,6 +54,16 @@ const VARIANCES: [(&str, VarianceForm); 5] = [
     ("HC1", VarianceForm::Hc1),
     ("HC2", VarianceForm::Hc2),
     ("HC3", VarianceForm::Hc3),
+];
+
+const STEPS: [(&str, DebiasingSteps); 2] = [
+    ("units", DebiasingSteps::Units),
+    ("batches", DebiasingSteps::Batches),
+];
+
+const ERRORS: [(&str, DebiasingError); 2] = [
+    ("weights", DebiasingError::Weights),
+    ("remainder-aware", DebiasingError::RemainderAware),
 ];
 
 /// Reads every method; `batches` is the number of batches, if it is known.
@@ -99,9 +118,15 @@ fn options(fields: &Fields<'_>, kind: Kind, batches: Option<usize>) -> MethodKin
     let mut keys = vec!["kind", "label"];
     match kind {
         Kind::LeastSquares => keys.push("variance"),
-        Kind::Ridge | Kind::WDecorrelation => keys.push("penalty"),
+        Kind::Ridge => keys.push("penalty"),
+        Kind::WDecorrelation => keys.extend(["penalty", "steps", "error"]),
+        Kind::SelfNormalised => keys.extend(["penalty", "bound"]),
         Kind::BatchCombined => keys.push("weights"),
-        Kind::FirstBatch | Kind::LastBatch | Kind::InverseVariance => {}
+        Kind::FirstBatch
+        | Kind::LastBatch
+        | Kind::InverseVariance
+        | Kind::AnticipatedDecorrelation
+        | Kind::PredictablePivot => {}
     }
     let word = fields.text("kind").unwrap_or_default();
     fields.only(&keys, &format!("the method \"{word}\""));
@@ -111,18 +136,9 @@ fn options(fields: &Fields<'_>, kind: Kind, batches: Option<usize>) -> MethodKin
                 .choice("variance", &VARIANCES)
                 .unwrap_or(VarianceForm::Model),
         },
-        Kind::Ridge => {
-            if fields.text("penalty").is_some() {
-                fields.report(
-                    "penalty",
-                    "the penalty is a word",
-                    "it must be a number above 0",
-                );
-            }
-            MethodKind::Ridge {
-                penalty: positive(fields, "penalty").unwrap_or(DEFAULT_PENALTY),
-            }
-        }
+        Kind::Ridge => MethodKind::Ridge {
+            penalty: number_penalty(fields),
+        },
         Kind::FirstBatch => MethodKind::FirstBatch,
         Kind::LastBatch => MethodKind::LastBatch,
         Kind::BatchCombined => MethodKind::BatchCombined {
@@ -131,8 +147,35 @@ fn options(fields: &Fields<'_>, kind: Kind, batches: Option<usize>) -> MethodKin
         Kind::InverseVariance => MethodKind::InverseVariance,
         Kind::WDecorrelation => MethodKind::WDecorrelation {
             penalty: debiasing_penalty(fields),
+            steps: fields
+                .choice("steps", &STEPS)
+                .unwrap_or(DebiasingSteps::Units),
+            error: fields
+                .choice("error", &ERRORS)
+                .unwrap_or(DebiasingError::Weights),
         },
+        Kind::AnticipatedDecorrelation => MethodKind::AnticipatedDecorrelation,
+        Kind::PredictablePivot => MethodKind::PredictablePivot,
+        Kind::SelfNormalised => {
+            fields.required("bound", "state a bound on the norm of the coefficients");
+            MethodKind::SelfNormalised {
+                penalty: number_penalty(fields),
+                bound: positive(fields, "bound").unwrap_or(1.0),
+            }
+        }
     }
+}
+
+/// A penalty that is a number above zero.
+fn number_penalty(fields: &Fields<'_>) -> f64 {
+    if fields.text("penalty").is_some() {
+        fields.report(
+            "penalty",
+            "the penalty is a word",
+            "it must be a number above 0",
+        );
+    }
+    positive(fields, "penalty").unwrap_or(DEFAULT_PENALTY)
 }
 
 fn debiasing_penalty(fields: &Fields<'_>) -> DebiasingPenalty {
@@ -210,10 +253,30 @@ fn label(kind: &MethodKind) -> String {
             BatchWeights::Given(_) => "batch-combined (given weights)".to_owned(),
         },
         MethodKind::InverseVariance => "inverse-variance".to_owned(),
-        MethodKind::WDecorrelation { penalty } => match penalty {
-            DebiasingPenalty::Replayed => "w-decorrelation".to_owned(),
-            DebiasingPenalty::Fixed(value) => format!("w-decorrelation (penalty {value})"),
-        },
+        MethodKind::WDecorrelation {
+            penalty,
+            steps,
+            error,
+        } => {
+            let mut options = Vec::new();
+            if *steps == DebiasingSteps::Batches {
+                options.push("by batches".to_owned());
+            }
+            if let DebiasingPenalty::Fixed(value) = penalty {
+                options.push(format!("penalty {value}"));
+            }
+            if *error == DebiasingError::RemainderAware {
+                options.push("remainder-aware".to_owned());
+            }
+            if options.is_empty() {
+                "w-decorrelation".to_owned()
+            } else {
+                format!("w-decorrelation ({})", options.join(", "))
+            }
+        }
+        MethodKind::AnticipatedDecorrelation => "anticipated-decorrelation".to_owned(),
+        MethodKind::PredictablePivot => "predictable-pivot".to_owned(),
+        MethodKind::SelfNormalised { .. } => "self-normalised".to_owned(),
     }
 }
 
