@@ -211,6 +211,7 @@ fn assert_answer(label: &str, found: Answer, point: f64, standard_error: f64) {
 }
 
 #[test]
+#[allow(clippy::too_many_lines)] // one definition after the other
 fn every_method_computes_its_definition() {
     let study = Study::prepare(&common::plan(SCENARIO));
     let mut worker = Worker::new(&study);
