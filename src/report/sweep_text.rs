@@ -17,28 +17,35 @@ pub fn sweep_tables(axes: &[String], points: &[SweepPoint], look: Look) -> Strin
     };
     for (truth, truth_name) in first.truths.iter().enumerate() {
         for (estimand, estimand_name) in first.estimands.iter().enumerate() {
-            let title = format!("Coverage in %: {estimand_name}, truth {truth_name}");
-            out.push_str(&bold(&title, look.ansi));
-            out.push('\n');
-            let columns = first
-                .methods
+            let title = format!(
+                "Coverage in % by {}: {estimand_name}, truth {truth_name}",
+                axes.join(", ")
+            );
+            for line in paragraph(&title, look.width).lines() {
+                out.push_str(&bold(line, look.ansi));
+                out.push('\n');
+            }
+            let columns = points
                 .iter()
-                .map(|method| Column {
-                    heading: method.replacen(" (", "\n(", 1),
+                .map(|point| Column {
+                    heading: point.axes.iter().map(show).collect::<Vec<_>>().join("\n"),
                     align: Align::Right,
                 })
                 .collect();
-            let mut table = TextTable::new(axes.join(", "), columns);
-            for point in points {
-                let label: Vec<String> = point.axes.iter().map(show).collect();
-                let measures = &point.scored.measures[truth];
-                let cells = measures
-                    .cells
+            let mut table = TextTable::new("method", columns);
+            for (method, label) in first.methods.iter().enumerate() {
+                let cells = points
                     .iter()
-                    .filter(|cell| cell.estimand == estimand)
-                    .map(|cell| measure_cell(cell.get(Measure::Coverage), 100.0, COVERAGE_DECIMALS))
+                    .map(|point| {
+                        let cells = &point.scored.measures[truth].cells;
+                        let own = cells
+                            .iter()
+                            .find(|cell| cell.estimand == estimand && cell.method == method);
+                        let coverage = own.and_then(|cell| cell.get(Measure::Coverage));
+                        measure_cell(coverage, 100.0, COVERAGE_DECIMALS)
+                    })
                     .collect();
-                table.push(label.join(", "), cells);
+                table.push(label.as_str(), cells);
             }
             out.push_str(&table.render(look.width, look.ansi));
             out.push('\n');
